@@ -1,0 +1,29 @@
+"""Vessel centrelines in, a checked network for any 1D or 0D blood-flow solver out.
+
+The public names are loaded when they are first used, so that importing the package is cheap.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import Any
+
+__version__ = "0.1.0"
+
+_PUBLIC: dict[str, str] = {}
+"""Public name -> module that defines it."""
+
+__all__ = ["__version__"]
+__all__ += list(_PUBLIC)
+
+
+def __getattr__(name: str) -> Any:
+    """Load a public name on first use."""
+    if name not in _PUBLIC:
+        raise AttributeError(f"module 'geomprep' has no attribute '{name}'; it offers {', '.join(sorted(__all__))}")
+    return getattr(import_module(_PUBLIC[name]), name)
+
+
+def __dir__() -> list[str]:
+    """List the public names, for tab completion."""
+    return sorted(__all__)

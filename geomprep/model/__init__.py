@@ -1,0 +1,60 @@
+"""The containers that the stages pass on, and the record of what was changed."""
+
+from geomprep.model.arrays import BoolArray, FloatArray, IntArray, TextArray, Uint8Array
+from geomprep.model.basis import BASIS_NAMES, VESSEL_CLASSES, Basis
+from geomprep.model.centrelines import Centrelines, concatenate
+from geomprep.model.chains import Chains, chains, degrees
+from geomprep.model.history import Decision, Repair
+from geomprep.model.ids import anchor_ids, raw_order
+from geomprep.model.network import (
+    NODE_ROLES,
+    Junctions,
+    Lumped,
+    Measures,
+    Network,
+    Nodes,
+    Origin,
+    Segments,
+    Stations,
+    Walls,
+)
+from geomprep.model.parameters import Blood, Inlet, Outlet, Surroundings, TubeLaw
+from geomprep.model.point_graph import PointGraph
+from geomprep.model.states import SteadyState
+
+__all__ = [
+    "BASIS_NAMES",
+    "NODE_ROLES",
+    "VESSEL_CLASSES",
+    "Basis",
+    "Blood",
+    "BoolArray",
+    "Centrelines",
+    "Chains",
+    "Decision",
+    "FloatArray",
+    "Inlet",
+    "IntArray",
+    "Junctions",
+    "Lumped",
+    "Measures",
+    "Network",
+    "Nodes",
+    "Origin",
+    "Outlet",
+    "PointGraph",
+    "Repair",
+    "Segments",
+    "Stations",
+    "SteadyState",
+    "Surroundings",
+    "TextArray",
+    "TubeLaw",
+    "Uint8Array",
+    "Walls",
+    "anchor_ids",
+    "chains",
+    "concatenate",
+    "degrees",
+    "raw_order",
+]

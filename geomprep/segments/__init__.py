@@ -1,0 +1,1 @@
+"""segments room."""
