@@ -1,0 +1,434 @@
+"""The steady network equations: conductances between nodes, heads, flows, balance of mass.
+
+With from/to nodes, conductances g and heads h, the flow of an edge is
+q = g (h_from − h_to), and at every node whose head is free the flows that leave
+it add up to the inflow. The unknown heads solve a symmetric, diagonally dominant
+system; it is factorised once by a direct sparse solver with its pivots on the diagonal.
+
+Heads alone cannot carry the flows of wide vessels: where conductances span twelve decades,
+the drop along the widest edge lies in the last four digits of the heads. The flows are
+therefore corrected beside the heads, each round from the imbalance that the last left behind.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+from scipy.sparse import coo_array
+from scipy.sparse.csgraph import connected_components
+from scipy.sparse.linalg import splu
+
+from geomprep.errors import ModelError
+
+__all__ = [
+    "Factorised",
+    "factorise",
+    "flows",
+    "heads",
+    "heads_and_flows",
+    "net_outflow",
+    "parts",
+    "steady_heads",
+    "with_far_nodes",
+]
+
+FloatArray = npt.NDArray[np.float64]
+IntArray = npt.NDArray[np.int64]
+
+_ROUNDS = 8
+_BALANCED = 1e-9  # imbalance over largest flow above which a result is refused
+
+
+@dataclass(frozen=True, eq=False)
+class Factorised:
+    """A factorised network: solve it for any heads and inflows.
+
+    Attributes
+    ----------
+    n_nodes : int
+    from_node, to_node : (e,) int array
+    conductance : (e,) float array
+    fixed : (f,) int array
+        Nodes whose head is given.
+    pinned : (p,) int array
+        One node of each part that holds no fixed node; its head is 0.
+    part : (n,) int array
+        Number of the connected part of each node.
+    free : (u,) int array
+        Nodes whose head is unknown.
+    scale : (u,) float array
+        Inverse root of the diagonal; rows and columns are multiplied by it.
+    factor : object
+        The factors of the scaled matrix; None where no head is unknown.
+    """
+
+    n_nodes: int
+    from_node: IntArray
+    to_node: IntArray
+    conductance: FloatArray
+    fixed: IntArray
+    pinned: IntArray
+    part: IntArray
+    free: IntArray
+    scale: FloatArray
+    factor: Any
+
+
+def parts(n_nodes: int, from_node: npt.ArrayLike, to_node: npt.ArrayLike, conductance: npt.ArrayLike) -> IntArray:
+    """Return the number of the connected part of each node; edges of conductance 0 do not connect.
+
+    Parameters
+    ----------
+    n_nodes : int
+    from_node, to_node : (e,) int array
+    conductance : (e,) float array
+
+    Returns
+    -------
+    (n_nodes,) int array
+        Parts are numbered from 0 in the order of their lowest node.
+
+    Examples
+    --------
+    >>> parts(4, [0, 3], [1, 2], [1.0, 1.0])
+    array([0, 0, 1, 1])
+    >>> parts(2, [0], [1], [0.0])
+    array([0, 1])
+    """
+    open_edge = np.asarray(conductance, dtype=np.float64) > 0
+    tail = np.asarray(from_node, dtype=np.int64)[open_edge]
+    head = np.asarray(to_node, dtype=np.int64)[open_edge]
+    matrix = coo_array((np.ones(len(tail), np.int8), (tail, head)), shape=(n_nodes, n_nodes))
+    label = connected_components(matrix, directed=False)[1]
+    _, first, inverse = np.unique(label, return_index=True, return_inverse=True)
+    return np.argsort(np.argsort(first, kind="stable"), kind="stable")[inverse].astype(np.int64)
+
+
+def with_far_nodes(
+    n_nodes: int,
+    edges: tuple[npt.ArrayLike, npt.ArrayLike, npt.ArrayLike],
+    ground_node: npt.ArrayLike,
+    ground_conductance: npt.ArrayLike,
+) -> tuple[int, IntArray, IntArray, FloatArray]:
+    """Add a node of its own behind each grounded conductance, such as an outlet resistance.
+
+    Parameters
+    ----------
+    n_nodes : int
+    edges : tuple of (e,) arrays
+        From node, to node, conductance.
+    ground_node : (k,) int array
+        Nodes that are joined to a far head.
+    ground_conductance : (k,) float array
+
+    Returns
+    -------
+    n_nodes : int
+        Grown by k; the far nodes are the last k, and the caller fixes their heads.
+    from_node, to_node : (e + k,) int array
+    conductance : (e + k,) float array
+        The last k edges run from the network to the far nodes.
+
+    Examples
+    --------
+    >>> with_far_nodes(2, ([0], [1], [3.0]), [1], [5.0])
+    (3, array([0, 1]), array([1, 2]), array([3., 5.]))
+    """
+    ground = np.asarray(ground_node, dtype=np.int64)
+    far = np.arange(n_nodes, n_nodes + len(ground))
+    return (
+        n_nodes + len(ground),
+        np.concatenate((np.asarray(edges[0], dtype=np.int64), ground)),
+        np.concatenate((np.asarray(edges[1], dtype=np.int64), far)),
+        np.concatenate((np.asarray(edges[2], dtype=np.float64), np.asarray(ground_conductance, dtype=np.float64))),
+    )
+
+
+def _checked(
+    n_nodes: int, from_node: npt.ArrayLike, to_node: npt.ArrayLike, conductance: npt.ArrayLike
+) -> tuple[IntArray, IntArray, FloatArray]:
+    """Ends and conductances as arrays; refuse what no network can have."""
+    tail, head = np.asarray(from_node, dtype=np.int64).ravel(), np.asarray(to_node, dtype=np.int64).ravel()
+    value = np.asarray(conductance, dtype=np.float64).ravel()
+    if not len(tail) == len(head) == len(value):
+        raise ModelError(f"{len(tail)} from nodes, {len(head)} to nodes, {len(value)} conductances; they must agree")
+    ends = np.concatenate((tail, head))
+    if ends.size and not (ends.min() >= 0 and ends.max() < n_nodes):
+        raise ModelError(f"an edge names a node outside 0…{n_nodes - 1}; nodes are numbered from 0")
+    bad = np.flatnonzero(~(np.isfinite(value) & (value >= 0)))
+    if bad.size:
+        raise ModelError(
+            f"conductance of edge {bad[0]} is {value[bad[0]]:g}; it must be a finite number and not negative"
+        )
+    return tail, head, value
+
+
+def factorise(
+    n_nodes: int,
+    from_node: npt.ArrayLike,
+    to_node: npt.ArrayLike,
+    conductance: npt.ArrayLike,
+    fixed: npt.ArrayLike,
+    still_parts: bool = False,
+) -> Factorised:
+    """Factorise the steady equations of a network.
+
+    Parameters
+    ----------
+    n_nodes : int
+    from_node, to_node : (e,) int array
+        Ends of each edge; parallel edges and self-loops are allowed.
+    conductance : (e,) float array
+        m³/(Pa·s) or any unit of flow per head; 0 closes an edge.
+    fixed : (f,) int array
+        Nodes whose heads will be given.
+    still_parts : bool
+        What to do with a connected part that holds no fixed node: False refuses it,
+        True gives its lowest node head 0, so that nothing flows there unless inflows
+        that add up to zero drive it.
+
+    Returns
+    -------
+    Factorised
+
+    Raises
+    ------
+    ModelError
+        A node number or conductance is impossible, a part has no fixed node, or the
+        conductances span more decades than double precision can carry.
+
+    Examples
+    --------
+    >>> chain = factorise(3, [0, 1], [1, 2], [1.0, 3.0], [0, 2])
+    >>> heads(chain, [4.0, 0.0])
+    array([4., 1., 0.])
+    >>> factorise(2, [0], [1], [1.0], [])
+    Traceback (most recent call last):
+    geomprep.errors.ModelError: 1 part(s) of the network hold no node of known head; the first holds node 0
+    """
+    tail, head, value = _checked(n_nodes, from_node, to_node, conductance)
+    given = np.asarray(fixed, dtype=np.int64).ravel()
+    if len(np.unique(given)) < len(given):
+        raise ModelError(
+            f"node {np.sort(given)[:-1][np.diff(np.sort(given)) == 0][0]} is fixed twice; give it one head"
+        )
+    if given.size and not (given.min() >= 0 and given.max() < n_nodes):
+        raise ModelError(f"a fixed node lies outside 0…{n_nodes - 1}; nodes are numbered from 0")
+    part = parts(n_nodes, tail, head, value)
+    pinned = _pinned(part, given, still_parts)
+    known = np.zeros(n_nodes, np.bool_)
+    known[given] = known[pinned] = True
+    free = np.flatnonzero(~known)
+    scale, factor = _factors(free, n_nodes, tail, head, value)
+    return Factorised(n_nodes, tail, head, value, given, pinned, part, free, scale, factor)
+
+
+def _pinned(part: IntArray, fixed: IntArray, still_parts: bool) -> IntArray:
+    """Lowest node of each part without a fixed node."""
+    first = np.unique(part, return_index=True)[1]
+    held = np.zeros(len(first), np.bool_)
+    held[part[fixed]] = True
+    pinned = first[~held].astype(np.int64)
+    if pinned.size and not still_parts:
+        raise ModelError(
+            f"{pinned.size} part(s) of the network hold no node of known head; the first holds node {pinned[0]} "
+            f"and {np.count_nonzero(part == part[pinned[0]]) - 1} more: give it a head or join it to the rest"
+        )
+    return pinned
+
+
+def _factors(free: IntArray, n_nodes: int, tail: IntArray, head: IntArray, value: FloatArray) -> tuple[FloatArray, Any]:
+    """Scale and factors of the matrix of free nodes."""
+    if free.size == 0:
+        return np.empty(0), None
+    row = np.full(n_nodes, -1, np.int32)
+    row[free] = np.arange(len(free), dtype=np.int32)
+    used = (tail != head) & (value > 0)
+    i, j, g = row[tail[used]], row[head[used]], value[used]
+    diagonal = np.bincount(i[i >= 0], g[i >= 0], len(free)) + np.bincount(j[j >= 0], g[j >= 0], len(free))
+    scale = 1.0 / np.sqrt(diagonal)
+    both = (i >= 0) & (j >= 0)
+    i, j = i[both], j[both]
+    off = -g[both] * scale[i] * scale[j]
+    own = np.arange(len(free), dtype=np.int32)
+    entries = (np.concatenate((off, off, np.ones(len(free)))), (np.r_[i, j, own], np.r_[j, i, own]))
+    matrix = coo_array(entries, shape=(len(free), len(free))).tocsc()
+    try:
+        # pivots stay on the diagonal: safe for these matrices, and fill stays as ordered
+        options = {"SymmetricMode": True, "Equil": False}
+        return scale, splu(matrix, permc_spec="MMD_AT_PLUS_A", diag_pivot_thresh=0.0, options=options)
+    except RuntimeError as error:
+        raise ModelError(_too_wide(value)) from error
+
+
+def _too_wide(conductance: FloatArray) -> str:
+    """Message for conductances that double precision cannot carry."""
+    used = conductance[conductance > 0]
+    return (
+        f"conductances from {used.min():.3g} to {used.max():.3g} span too many decades for double precision; "
+        "look for a radius far too small or too large, or close the smallest edges"
+    )
+
+
+def net_outflow(n_nodes: int, from_node: IntArray, to_node: IntArray, flow: FloatArray) -> FloatArray:
+    """Return the sum of the flows that leave each node minus those that arrive.
+
+    Examples
+    --------
+    >>> net_outflow(3, np.array([0, 1]), np.array([1, 2]), np.array([2.0, 2.0]))
+    array([ 2.,  0., -2.])
+    """
+    return np.bincount(from_node, flow, n_nodes) - np.bincount(to_node, flow, n_nodes)
+
+
+def heads_and_flows(
+    network: Factorised, fixed_heads: npt.ArrayLike, inflow: npt.ArrayLike | None = None
+) -> tuple[FloatArray, FloatArray]:
+    """Solve a factorised network for given heads and inflows.
+
+    Parameters
+    ----------
+    network : Factorised
+    fixed_heads : (f,) float array
+        Heads of ``network.fixed``, in that order.
+    inflow : (n,) float array, optional
+        Flow that enters the network at each node from outside; what is given at a
+        fixed node has no effect, its head decides.
+
+    Returns
+    -------
+    heads : (n,) float array
+    flows : (e,) float array
+        Positive from → to; balanced at free nodes to rounding even where the heads
+        cannot resolve the drop along a wide edge.
+
+    Raises
+    ------
+    ModelError
+        A part without fixed node has inflows that do not add up to zero, a value is not
+        finite, or the conductances span too many decades.
+
+    Examples
+    --------
+    >>> pair = factorise(2, [0, 0], [1, 1], [1.0, 3.0], [1])
+    >>> head, flow = heads_and_flows(pair, [0.0], [8.0, 0.0])
+    >>> head.tolist(), flow.tolist()
+    ([2.0, 0.0], [2.0, 6.0])
+    """
+    given = np.asarray(fixed_heads, dtype=np.float64).ravel()
+    source = np.zeros(network.n_nodes) if inflow is None else np.asarray(inflow, dtype=np.float64)
+    _check_right_side(network, given, source)
+    level = np.zeros(int(network.part.max(initial=-1)) + 1)
+    level[network.part[network.fixed[::-1]]] = given[::-1]
+    raised = level[network.part]  # heads above one of the part: equal heads then give exactly no flow
+    x = np.zeros(network.n_nodes)
+    x[network.fixed] = given - raised[network.fixed]
+    x[network.free] = _solved(network, source[network.free] - _outflow(network, _flow(network, x)))
+    flow = _flow(network, x)
+    for _ in range(_ROUNDS):
+        left = source[network.free] - _outflow(network, flow)
+        largest = max(np.abs(flow).max(initial=0.0), np.abs(source).max(initial=0.0))
+        if np.abs(left).max(initial=0.0) <= 4 * np.finfo(np.float64).eps * largest:
+            return raised + x, flow
+        step = np.zeros(network.n_nodes)
+        step[network.free] = _solved(network, left)
+        x, flow = x + step, flow + _flow(network, step)
+    if not np.abs(source[network.free] - _outflow(network, flow)).max() <= _BALANCED * np.abs(flow).max():
+        raise ModelError(_too_wide(network.conductance))
+    return raised + x, flow
+
+
+def _check_right_side(network: Factorised, given: FloatArray, source: FloatArray) -> None:
+    """Refuse heads and inflows that do not fit the network."""
+    if len(given) != len(network.fixed) or source.shape != (network.n_nodes,):
+        raise ModelError(
+            f"{len(given)} heads for {len(network.fixed)} fixed nodes and {source.shape[0]} inflows "
+            f"for {network.n_nodes} nodes given; they must agree"
+        )
+    if not (np.isfinite(given).all() and np.isfinite(source).all()):
+        raise ModelError("a fixed head or an inflow is not a finite number; give each a value")
+    for node in network.pinned[np.flatnonzero(_part_inflow(network, source) != 0)].tolist():
+        raise ModelError(
+            f"the part of the network with node {node} holds no node of known head, and its inflows do not "
+            "add up to zero; give it a head or balance its inflows"
+        )
+
+
+def _part_inflow(network: Factorised, source: FloatArray) -> FloatArray:
+    """Net inflow of each part without fixed node; 0 where it is within rounding."""
+    count = int(network.part.max(initial=-1)) + 1
+    net: FloatArray = np.bincount(network.part, source, count)[network.part[network.pinned]]
+    size = np.bincount(network.part, np.abs(source), count)[network.part[network.pinned]]
+    net[np.abs(net) <= _BALANCED * size] = 0.0
+    return net
+
+
+def _flow(network: Factorised, head: FloatArray) -> FloatArray:
+    """Flow of each edge at given heads."""
+    return network.conductance * (head[network.from_node] - head[network.to_node])
+
+
+def _outflow(network: Factorised, flow: FloatArray) -> FloatArray:
+    """Net outflow at the free nodes."""
+    return net_outflow(network.n_nodes, network.from_node, network.to_node, flow)[network.free]
+
+
+def _solved(network: Factorised, right: FloatArray) -> FloatArray:
+    """Heads of the free nodes for a right side."""
+    if network.factor is None:
+        return right
+    return np.asarray(network.scale * network.factor.solve(network.scale * right), dtype=np.float64)
+
+
+def heads(network: Factorised, fixed_heads: npt.ArrayLike, inflow: npt.ArrayLike | None = None) -> FloatArray:
+    """Return the heads of :func:`heads_and_flows` alone, (n,).
+
+    Examples
+    --------
+    >>> heads(factorise(2, [0], [1], [2.0], [1]), [1.0], [4.0, 0.0])
+    array([3., 1.])
+    """
+    return heads_and_flows(network, fixed_heads, inflow)[0]
+
+
+def flows(network: Factorised, fixed_heads: npt.ArrayLike, inflow: npt.ArrayLike | None = None) -> FloatArray:
+    """Return the flows of :func:`heads_and_flows` alone, (e,), positive from → to.
+
+    Examples
+    --------
+    >>> flows(factorise(2, [0], [1], [2.0], [0, 1]), [3.0, 1.0])
+    array([4.])
+    """
+    return heads_and_flows(network, fixed_heads, inflow)[1]
+
+
+def steady_heads(
+    n_nodes: int,
+    from_node: npt.ArrayLike,
+    to_node: npt.ArrayLike,
+    conductance: npt.ArrayLike,
+    fixed_nodes: npt.ArrayLike,
+    fixed_heads: npt.ArrayLike,
+    inflow: npt.ArrayLike | None = None,
+) -> FloatArray:
+    """Factorise and solve in one call; parts without any fixed node get head 0 everywhere.
+
+    Parameters and errors are those of :func:`factorise` and :func:`heads_and_flows`.
+
+    Returns
+    -------
+    (n_nodes,) float array
+        Heads. Inflows that add up to zero in a part without fixed node are honoured,
+        with head 0 at its lowest node.
+
+    Examples
+    --------
+    >>> steady_heads(5, [0, 1, 3], [1, 2, 4], [1.0, 1.0, 1.0], [0, 2], [2.0, 0.0])
+    array([2., 1., 0., 0., 0.])
+    >>> steady_heads(0, [], [], [], [], [])
+    array([], dtype=float64)
+    """
+    return heads(factorise(n_nodes, from_node, to_node, conductance, fixed_nodes, True), fixed_heads, inflow)
