@@ -281,7 +281,8 @@ def net_outflow(n_nodes: int, from_node: IntArray, to_node: IntArray, flow: Floa
     >>> net_outflow(3, np.array([0, 1]), np.array([1, 2]), np.array([2.0, 2.0]))
     array([ 2.,  0., -2.])
     """
-    return np.bincount(from_node, flow, n_nodes) - np.bincount(to_node, flow, n_nodes)
+    out, into = np.bincount(from_node, flow, n_nodes), np.bincount(to_node, flow, n_nodes)
+    return np.asarray(out - into, dtype=np.float64)
 
 
 def heads_and_flows(
@@ -360,10 +361,9 @@ def _check_right_side(network: Factorised, given: FloatArray, source: FloatArray
 def _part_inflow(network: Factorised, source: FloatArray) -> FloatArray:
     """Net inflow of each part without fixed node; 0 where it is within rounding."""
     count = int(network.part.max(initial=-1)) + 1
-    net: FloatArray = np.bincount(network.part, source, count)[network.part[network.pinned]]
+    net = np.bincount(network.part, source, count)[network.part[network.pinned]].astype(np.float64)
     size = np.bincount(network.part, np.abs(source), count)[network.part[network.pinned]]
-    net[np.abs(net) <= _BALANCED * size] = 0.0
-    return net
+    return np.asarray(np.where(np.abs(net) <= _BALANCED * size, 0.0, net), dtype=np.float64)
 
 
 def _flow(network: Factorised, head: FloatArray) -> FloatArray:
