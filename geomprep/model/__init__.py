@@ -1,6 +1,6 @@
 """The containers that the stages pass on, and the record of what was changed."""
 
-from geomprep.model.arrays import BoolArray, FloatArray, IntArray, TextArray, Uint8Array
+from geomprep.model.arrays import BoolArray, FloatArray, IntArray, TextArray, Uint8Array, texts
 from geomprep.model.basis import BASIS_NAMES, VESSEL_CLASSES, Basis
 from geomprep.model.centrelines import Centrelines, concatenate
 from geomprep.model.chains import Chains, chains, degrees
@@ -57,4 +57,5 @@ __all__ = [
     "concatenate",
     "degrees",
     "raw_order",
+    "texts",
 ]

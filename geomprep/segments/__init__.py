@@ -1,1 +1,8 @@
-"""segments room."""
+"""From points to segments: split, resample, orient, order."""
+
+from geomprep.segments.orders import OrderResult, order_segments
+from geomprep.segments.orient import orient
+from geomprep.segments.resample import resample
+from geomprep.segments.split import split
+
+__all__ = ["OrderResult", "order_segments", "orient", "resample", "split"]
