@@ -1,0 +1,1 @@
+"""What draws the Saltmere phantom series; run ``make_samples.py`` beside this folder."""
