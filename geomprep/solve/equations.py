@@ -18,10 +18,10 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 from scipy.sparse import coo_array
-from scipy.sparse.csgraph import connected_components
 from scipy.sparse.linalg import splu
 
 from geomprep.errors import ModelError
+from geomprep.solve.edges import FloatArray, IntArray, checked_edges, net_outflow, parts
 
 __all__ = [
     "Factorised",
@@ -29,16 +29,10 @@ __all__ = [
     "flows",
     "heads",
     "heads_and_flows",
-    "net_outflow",
-    "parts",
     "steady_heads",
-    "with_far_nodes",
 ]
 
-FloatArray = npt.NDArray[np.float64]
-IntArray = npt.NDArray[np.int64]
-
-_ROUNDS = 8
+_ROUNDS = 40  # each gains the digits that the span of conductances leaves: sixteen to one
 _BALANCED = 1e-9  # imbalance over largest flow above which a result is refused
 
 
@@ -60,7 +54,7 @@ class Factorised:
     free : (u,) int array
         Nodes whose head is unknown.
     scale : (u,) float array
-        Inverse root of the diagonal; rows and columns are multiplied by it.
+        About the inverse root of the diagonal, a power of two; rows and columns are multiplied by it.
     factor : object
         The factors of the scaled matrix; None where no head is unknown.
     """
@@ -75,95 +69,6 @@ class Factorised:
     free: IntArray
     scale: FloatArray
     factor: Any
-
-
-def parts(n_nodes: int, from_node: npt.ArrayLike, to_node: npt.ArrayLike, conductance: npt.ArrayLike) -> IntArray:
-    """Return the number of the connected part of each node; edges of conductance 0 do not connect.
-
-    Parameters
-    ----------
-    n_nodes : int
-    from_node, to_node : (e,) int array
-    conductance : (e,) float array
-
-    Returns
-    -------
-    (n_nodes,) int array
-        Parts are numbered from 0 in the order of their lowest node.
-
-    Examples
-    --------
-    >>> parts(4, [0, 3], [1, 2], [1.0, 1.0])
-    array([0, 0, 1, 1])
-    >>> parts(2, [0], [1], [0.0])
-    array([0, 1])
-    """
-    open_edge = np.asarray(conductance, dtype=np.float64) > 0
-    tail = np.asarray(from_node, dtype=np.int64)[open_edge]
-    head = np.asarray(to_node, dtype=np.int64)[open_edge]
-    matrix = coo_array((np.ones(len(tail), np.int8), (tail, head)), shape=(n_nodes, n_nodes))
-    label = connected_components(matrix, directed=False)[1]
-    _, first, inverse = np.unique(label, return_index=True, return_inverse=True)
-    return np.argsort(np.argsort(first, kind="stable"), kind="stable")[inverse].astype(np.int64)
-
-
-def with_far_nodes(
-    n_nodes: int,
-    edges: tuple[npt.ArrayLike, npt.ArrayLike, npt.ArrayLike],
-    ground_node: npt.ArrayLike,
-    ground_conductance: npt.ArrayLike,
-) -> tuple[int, IntArray, IntArray, FloatArray]:
-    """Add a node of its own behind each grounded conductance, such as an outlet resistance.
-
-    Parameters
-    ----------
-    n_nodes : int
-    edges : tuple of (e,) arrays
-        From node, to node, conductance.
-    ground_node : (k,) int array
-        Nodes that are joined to a far head.
-    ground_conductance : (k,) float array
-
-    Returns
-    -------
-    n_nodes : int
-        Grown by k; the far nodes are the last k, and the caller fixes their heads.
-    from_node, to_node : (e + k,) int array
-    conductance : (e + k,) float array
-        The last k edges run from the network to the far nodes.
-
-    Examples
-    --------
-    >>> with_far_nodes(2, ([0], [1], [3.0]), [1], [5.0])
-    (3, array([0, 1]), array([1, 2]), array([3., 5.]))
-    """
-    ground = np.asarray(ground_node, dtype=np.int64)
-    far = np.arange(n_nodes, n_nodes + len(ground))
-    return (
-        n_nodes + len(ground),
-        np.concatenate((np.asarray(edges[0], dtype=np.int64), ground)),
-        np.concatenate((np.asarray(edges[1], dtype=np.int64), far)),
-        np.concatenate((np.asarray(edges[2], dtype=np.float64), np.asarray(ground_conductance, dtype=np.float64))),
-    )
-
-
-def _checked(
-    n_nodes: int, from_node: npt.ArrayLike, to_node: npt.ArrayLike, conductance: npt.ArrayLike
-) -> tuple[IntArray, IntArray, FloatArray]:
-    """Ends and conductances as arrays; refuse what no network can have."""
-    tail, head = np.asarray(from_node, dtype=np.int64).ravel(), np.asarray(to_node, dtype=np.int64).ravel()
-    value = np.asarray(conductance, dtype=np.float64).ravel()
-    if not len(tail) == len(head) == len(value):
-        raise ModelError(f"{len(tail)} from nodes, {len(head)} to nodes, {len(value)} conductances; they must agree")
-    ends = np.concatenate((tail, head))
-    if ends.size and not (ends.min() >= 0 and ends.max() < n_nodes):
-        raise ModelError(f"an edge names a node outside 0…{n_nodes - 1}; nodes are numbered from 0")
-    bad = np.flatnonzero(~(np.isfinite(value) & (value >= 0)))
-    if bad.size:
-        raise ModelError(
-            f"conductance of edge {bad[0]} is {value[bad[0]]:g}; it must be a finite number and not negative"
-        )
-    return tail, head, value
 
 
 def factorise(
@@ -209,7 +114,7 @@ def factorise(
     Traceback (most recent call last):
     geomprep.errors.ModelError: 1 part(s) of the network hold no node of known head; the first holds node 0
     """
-    tail, head, value = _checked(n_nodes, from_node, to_node, conductance)
+    tail, head, value = checked_edges(n_nodes, from_node, to_node, conductance)
     given = np.asarray(fixed, dtype=np.int64).ravel()
     if len(np.unique(given)) < len(given):
         raise ModelError(
@@ -249,12 +154,12 @@ def _factors(free: IntArray, n_nodes: int, tail: IntArray, head: IntArray, value
     used = (tail != head) & (value > 0)
     i, j, g = row[tail[used]], row[head[used]], value[used]
     diagonal = np.bincount(i[i >= 0], g[i >= 0], len(free)) + np.bincount(j[j >= 0], g[j >= 0], len(free))
-    scale = 1.0 / np.sqrt(diagonal)
+    scale = np.ldexp(1.0, -(np.frexp(diagonal)[1] // 2))  # powers of two: scaling rounds nothing
     both = (i >= 0) & (j >= 0)
     i, j = i[both], j[both]
     off = -g[both] * scale[i] * scale[j]
     own = np.arange(len(free), dtype=np.int32)
-    entries = (np.concatenate((off, off, np.ones(len(free)))), (np.r_[i, j, own], np.r_[j, i, own]))
+    entries = (np.concatenate((off, off, diagonal * scale**2)), (np.r_[i, j, own], np.r_[j, i, own]))
     matrix = coo_array(entries, shape=(len(free), len(free))).tocsc()
     try:
         # pivots stay on the diagonal: safe for these matrices, and fill stays as ordered
@@ -271,18 +176,6 @@ def _too_wide(conductance: FloatArray) -> str:
         f"conductances from {used.min():.3g} to {used.max():.3g} span too many decades for double precision; "
         "look for a radius far too small or too large, or close the smallest edges"
     )
-
-
-def net_outflow(n_nodes: int, from_node: IntArray, to_node: IntArray, flow: FloatArray) -> FloatArray:
-    """Return the sum of the flows that leave each node minus those that arrive.
-
-    Examples
-    --------
-    >>> net_outflow(3, np.array([0, 1]), np.array([1, 2]), np.array([2.0, 2.0]))
-    array([ 2.,  0., -2.])
-    """
-    out, into = np.bincount(from_node, flow, n_nodes), np.bincount(to_node, flow, n_nodes)
-    return np.asarray(out - into, dtype=np.float64)
 
 
 def heads_and_flows(
@@ -329,17 +222,28 @@ def heads_and_flows(
     x[network.fixed] = given - raised[network.fixed]
     x[network.free] = _solved(network, source[network.free] - _outflow(network, _flow(network, x)))
     flow = _flow(network, x)
+    x, flow = _corrected(network, source, x, flow)
+    return raised + x, flow
+
+
+def _corrected(
+    network: Factorised, source: FloatArray, x: FloatArray, flow: FloatArray
+) -> tuple[FloatArray, FloatArray]:
+    """Heads and flows after the imbalance has been sent through the network until none is left."""
+    size = np.abs(source).max(initial=0.0)
+    before = np.inf
     for _ in range(_ROUNDS):
         left = source[network.free] - _outflow(network, flow)
-        largest = max(np.abs(flow).max(initial=0.0), np.abs(source).max(initial=0.0))
-        if np.abs(left).max(initial=0.0) <= 4 * np.finfo(np.float64).eps * largest:
-            return raised + x, flow
+        imbalance = np.abs(left).max(initial=0.0)
+        largest = max(np.abs(flow).max(initial=0.0), size)
+        if imbalance <= 4 * np.finfo(np.float64).eps * largest or imbalance > before / 2:
+            break
         step = np.zeros(network.n_nodes)
         step[network.free] = _solved(network, left)
-        x, flow = x + step, flow + _flow(network, step)
-    if not np.abs(source[network.free] - _outflow(network, flow)).max() <= _BALANCED * np.abs(flow).max():
+        x, flow, before = x + step, flow + _flow(network, step), imbalance
+    if not imbalance <= _BALANCED * largest:
         raise ModelError(_too_wide(network.conductance))
-    return raised + x, flow
+    return x, flow
 
 
 def _check_right_side(network: Factorised, given: FloatArray, source: FloatArray) -> None:
