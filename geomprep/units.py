@@ -59,6 +59,8 @@ UCUM: Final[dict[str, str]] = {
     "per pressure": "/Pa",
     "angle": "rad",
     "conductance": "m3/(Pa.s)",
+    "per length": "/m",
+    "per volume": "/m3",
 }
 """UCUM code of the SI unit in which each kind of quantity is exported."""
 

@@ -4,6 +4,7 @@ from geomprep.model.arrays import BoolArray, FloatArray, IntArray, TextArray, Ui
 from geomprep.model.basis import BASIS_NAMES, VESSEL_CLASSES, Basis
 from geomprep.model.centrelines import Centrelines, concatenate
 from geomprep.model.chains import Chains, chains, degrees
+from geomprep.model.fields import FIXED_BY_FORMAT, Field, FieldTable, field, field_tables
 from geomprep.model.history import Decision, Repair
 from geomprep.model.ids import anchor_ids, raw_order
 from geomprep.model.network import (
@@ -24,6 +25,7 @@ from geomprep.model.states import SteadyState
 
 __all__ = [
     "BASIS_NAMES",
+    "FIXED_BY_FORMAT",
     "NODE_ROLES",
     "VESSEL_CLASSES",
     "Basis",
@@ -32,6 +34,8 @@ __all__ = [
     "Centrelines",
     "Chains",
     "Decision",
+    "Field",
+    "FieldTable",
     "FloatArray",
     "Inlet",
     "IntArray",
@@ -56,6 +60,8 @@ __all__ = [
     "chains",
     "concatenate",
     "degrees",
+    "field",
+    "field_tables",
     "raw_order",
     "texts",
 ]
