@@ -1,5 +1,7 @@
 """Chains against networkx on random multigraphs."""
 
+import itertools
+
 import networkx as nx
 import numpy as np
 import pytest
@@ -19,7 +21,7 @@ def multigraphs(draw: st.DrawFn) -> tuple[int, np.ndarray]:
         inner = draw(st.integers(0, 4))
         run = [a, *range(used, used + inner), b]
         used += inner
-        edges += list(zip(run[:-1], run[1:], strict=True))
+        edges += list(itertools.pairwise(run))
     order = draw(st.permutations(range(len(edges))))
     flips = draw(st.lists(st.booleans(), min_size=len(edges), max_size=len(edges)))
     mixed = [edges[i][::-1] if flip else edges[i] for i, flip in zip(order, flips, strict=True)]
