@@ -16,7 +16,16 @@ from typing import Final
 
 from geomprep.errors import InputError
 
-__all__ = ["DIMENSIONS", "LENGTH_UNITS", "UCUM", "format_quantity", "length_factor", "parse_quantity", "unit_factor"]
+__all__ = [
+    "DIMENSIONS",
+    "LENGTH_UNITS",
+    "STANDARD_GRAVITY",
+    "UCUM",
+    "format_quantity",
+    "length_factor",
+    "parse_quantity",
+    "unit_factor",
+]
 
 Dimension = tuple[int, int, int]  # exponents of metre, kilogram, second
 
@@ -63,6 +72,9 @@ UCUM: Final[dict[str, str]] = {
     "per volume": "/m3",
 }
 """UCUM code of the SI unit in which each kind of quantity is exported."""
+
+STANDARD_GRAVITY: Final = 9.80665
+"""Standard acceleration of free fall in m/s² (3rd CGPM 1901; NIST SP 811 table B.8)."""
 
 _MMHG = 133.322387415
 _SYMBOLS: Final[dict[str, tuple[float, Dimension]]] = {
