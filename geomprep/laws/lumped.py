@@ -10,6 +10,7 @@ from __future__ import annotations
 import numpy as np
 import numpy.typing as npt
 
+from geomprep.curves import line_sums, pieces
 from geomprep.laws.arrays import FloatArray, positive
 from geomprep.laws.blood import friction_coefficient
 
@@ -141,15 +142,12 @@ def compliance(
     >>> compliance([], [], [], [0])
     array([], dtype=float64)
     """
-    bounds = np.asarray(offsets, dtype=np.int64)
-    r, d = positive("radius", radius), positive("distensibility", distensibility)
-    if len(bounds) < 2:
-        return np.zeros(0)
-    step = np.diff(np.asarray(distance, dtype=np.float64))
-    step[bounds[1:-1] - 1] = 0.0  # the step from one vessel to the next is no length
-    middle = (r[:-1] + r[1:]) ** 2 * (d[:-1] + d[1:]) / 2
-    piece = np.pi / 6 * step * (r[:-1] ** 2 * d[:-1] + middle + r[1:] ** 2 * d[1:])
-    return np.asarray(np.add.reduceat(np.append(piece, 0.0), bounds[:-1]))
+    r, d, at = positive("radius", radius), positive("distensibility", distensibility), np.asarray(distance)
+    piece = pieces(np.asarray(offsets, dtype=np.int64))
+    near, far = piece.first, piece.first + 1
+    middle = (r[near] + r[far]) ** 2 * (d[near] + d[far]) / 2
+    cubic = r[near] ** 2 * d[near] + middle + r[far] ** 2 * d[far]
+    return line_sums(np.pi / 6 * (at[far] - at[near]) * cubic, piece.starts)
 
 
 def characteristic_impedance(area: npt.ArrayLike, wave_speed: npt.ArrayLike, density: float) -> FloatArray:

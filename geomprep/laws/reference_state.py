@@ -16,7 +16,7 @@ from geomprep.errors import ModelError
 from geomprep.laws.arrays import FloatArray, positive
 from geomprep.laws.power_pair import check_exponents
 
-__all__ = ["buckling_reference", "slowest_wave_speed"]
+__all__ = ["buckling_reference", "power_parts", "slowest_wave_speed"]
 
 
 def slowest_wave_speed(transmural: npt.ArrayLike, density: float, m: float, n: float) -> FloatArray:
@@ -49,13 +49,48 @@ def slowest_wave_speed(transmural: npt.ArrayLike, density: float, m: float, n: f
     return np.asarray(np.sqrt((np.maximum(m * pressure, n * pressure) + 0.0) / positive("density", density)))
 
 
+def power_parts(
+    transmural: npt.ArrayLike, wave_speed: npt.ArrayLike, density: float, m: float, n: float
+) -> tuple[FloatArray, FloatArray]:
+    """Return u = K a^m and v = K a^n of the law with p0 = 0 at an imaged state.
+
+    The two conditions u − v = p and m u − n v = ρc² are linear in u and v. A law exists exactly
+    where both are above zero.
+
+    Parameters
+    ----------
+    transmural : array_like
+        Transmural pressure at imaging, Pa.
+    wave_speed : array_like
+        c in m/s at the imaged state.
+    density : float
+        ρ of blood in kg/m³.
+    m, n : float
+        Exponents of the law.
+
+    Returns
+    -------
+    rising, falling : ndarray
+        u and v in Pa.
+
+    Examples
+    --------
+    >>> [float(part) for part in power_parts(1000.0, 4.0, 1000.0, 9, -1.0)]
+    [1700.0, 700.0]
+    """
+    check_exponents(m, n)
+    pressure = np.asarray(transmural, dtype=np.float64)
+    inertia = positive("density", density) * positive("wave speed", wave_speed) ** 2
+    return np.asarray((inertia - n * pressure) / (m - n)), np.asarray((inertia - m * pressure) / (m - n))
+
+
 def buckling_reference(
     area: npt.ArrayLike, transmural: npt.ArrayLike, wave_speed: npt.ArrayLike, density: float, m: float, n: float
 ) -> tuple[FloatArray, FloatArray]:
     """Return A0 and K of the law with p0 = 0 that passes through an imaged state.
 
-    With a = A/A0 at imaging, u = K a^m and v = K a^n, the two conditions are linear,
-    u − v = p and m u − n v = ρc², so that
+    With a = A/A0 at imaging, u = K a^m and v = K a^n, the conditions u − v = p and
+    m u − n v = ρc² give
 
         u = (ρc² − n p)/(m − n),  v = (ρc² − m p)/(m − n),
         a = (u/v)^(1/(m − n)),    K = v^(m/(m − n)) u^(−n/(m − n)).
@@ -95,18 +130,15 @@ def buckling_reference(
     Traceback (most recent call last):
     geomprep.errors.ModelError: wave speed 3 m/s at a transmural pressure of 1000 Pa: ... faster than 3 m/s...
     """
-    check_exponents(m, n)
-    pressure, speed = np.asarray(transmural, dtype=np.float64), positive("wave speed", wave_speed)
-    inertia = positive("density", density) * speed**2
-    first, second = (inertia - n * pressure) / (m - n), (inertia - m * pressure) / (m - n)
-    bad = ~((first > 0) & (second > 0))
+    rising, falling = power_parts(transmural, wave_speed, density, m, n)
+    bad = ~((rising > 0) & (falling > 0))
     if bad.any():
-        shown, at = (np.broadcast_to(values, bad.shape)[bad].ravel()[0] for values in (speed, pressure))
+        shown, at = (np.broadcast_to(values, bad.shape)[bad].ravel()[0] for values in (wave_speed, transmural))
         raise ModelError(
             f"wave speed {shown:g} m/s at a transmural pressure of {at:g} Pa: a law with m = {m:g}, n = {n:g} and "
             f"p0 = 0 needs one faster than {float(slowest_wave_speed(at, density, m, n)):.6g} m/s; give a faster "
             "one or take the imaged reference state"
         )
-    ratio = np.exp((np.log(first) - np.log(second)) / (m - n))
-    stiffness = np.exp((m * np.log(second) - n * np.log(first)) / (m - n))
+    ratio = np.exp((np.log(rising) - np.log(falling)) / (m - n))
+    stiffness = np.exp((m * np.log(falling) - n * np.log(rising)) / (m - n))
     return np.asarray(positive("area", area) / ratio), np.asarray(stiffness)
