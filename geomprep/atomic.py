@@ -7,19 +7,20 @@ import tempfile
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
+from typing import BinaryIO
 
 from geomprep.errors import InputError
 
-__all__ = ["replacing", "write_atomic"]
+__all__ = ["atomic_writer", "replacing", "write_atomic"]
 
 
 @contextmanager
 def replacing(path: str | Path) -> Iterator[Path]:
     """Give the name of a new file beside `path` that takes its place when the block ends well.
 
-    The new file lies in the same folder, is flushed to the disk and then renamed, so that
-    at no moment a half-written file bears the final name. When the block raises, the new
-    file is removed and the old one stays.
+    For writers that want a name. The new file lies in the same folder, is flushed to the
+    disk and then renamed, so that at no moment a half-written file bears the final name.
+    When the block raises, the new file is removed and the old one stays.
 
     Parameters
     ----------
@@ -46,7 +47,7 @@ def replacing(path: str | Path) -> Iterator[Path]:
     >>> with replacing("/no/such/folder/note.txt") as new:
     ...     pass
     Traceback (most recent call last):
-    geomprep.errors.InputError: /no/such/folder/note.txt: cannot be written (No such file or directory); ...
+    geomprep.errors.InputError: /no/such/folder/note.txt: cannot be written: No such file or directory; ...
     """
     final = Path(path)
     new: Path | None = None
@@ -59,9 +60,9 @@ def replacing(path: str | Path) -> Iterator[Path]:
         yield new
         _settle(new, final)
     except OSError as error:
-        reason = error.strerror or str(error)
         raise InputError(
-            f"{path}: cannot be written ({reason}); choose a folder that exists, may be written and has room left"
+            f"{path}: cannot be written: {error.strerror or error}; "
+            "choose a folder that exists, may be written and has room"
         ) from error
     finally:
         if new is not None:
@@ -76,6 +77,37 @@ def _settle(new: Path, final: Path) -> None:
     with new.open("rb") as stream:
         os.fsync(stream.fileno())
     new.replace(final)
+
+
+@contextmanager
+def atomic_writer(path: str | Path) -> Iterator[BinaryIO]:
+    """Give a stream whose content takes the place of `path` when the block ends well.
+
+    Parameters
+    ----------
+    path : str or Path
+        Final name.
+
+    Yields
+    ------
+    BinaryIO
+        Stream open for writing bytes.
+
+    Raises
+    ------
+    InputError
+        The folder is missing or not writable, `path` is a folder, or the disk is full.
+
+    Examples
+    --------
+    >>> folder = tempfile.mkdtemp()
+    >>> with atomic_writer(f"{folder}/note.txt") as stream:
+    ...     _ = stream.write(b"whole")
+    >>> Path(folder, "note.txt").read_bytes()
+    b'whole'
+    """
+    with replacing(path) as new, new.open("wb") as stream:
+        yield stream
 
 
 def write_atomic(path: str | Path, data: bytes | str) -> None:
@@ -100,5 +132,5 @@ def write_atomic(path: str | Path, data: bytes | str) -> None:
     >>> Path(folder, "empty.txt").read_bytes()
     b''
     """
-    with replacing(path) as new:
-        new.write_bytes(data.encode() if isinstance(data, str) else data)
+    with atomic_writer(path) as stream:
+        stream.write(data.encode() if isinstance(data, str) else data)

@@ -1,1 +1,20 @@
-"""files room."""
+"""Files in and out: every format that holds lines, read in a contained way."""
+
+from geomprep.files.contained import ReadLimits
+from geomprep.files.contents import FileContents
+from geomprep.files.formats import FORMATS, Format, format_of
+from geomprep.files.reading import Reading, read_file, read_files, start_reading
+from geomprep.files.writing import write_lines
+
+__all__ = [
+    "FORMATS",
+    "FileContents",
+    "Format",
+    "ReadLimits",
+    "Reading",
+    "format_of",
+    "read_file",
+    "read_files",
+    "start_reading",
+    "write_lines",
+]
