@@ -2,48 +2,37 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
 
+from geomprep.errors import ModelError
 from geomprep.solve.edges import FloatArray, IntArray, net_outflow, with_far_nodes
 from geomprep.solve.equations import factorise, heads_and_flows
 
 __all__ = ["Boundary", "Solution", "solve_between"]
 
 
-def _none() -> FloatArray:
-    """No values."""
-    return np.empty(0)
-
-
-def _no_nodes() -> IntArray:
-    """No nodes."""
-    return np.empty(0, np.int64)
-
-
 @dataclass(frozen=True, eq=False)
 class Boundary:
-    """What stands at the ends of a network; a node appears in one group at most.
+    """What stands at the ends of a network, one row per end.
 
     Attributes
     ----------
-    fixed_node, fixed_head : (f,) array
-        Nodes whose head is held.
-    flow_node, inflow : (i,) array
-        Nodes where a flow enters from outside (negative: leaves).
-    far_node, far_resistance, far_head : (k,) array
-        Nodes joined by a resistance above zero to a far head.
+    node : (m,) int array
+    inflow : (m,) float array
+        Flow that enters from outside (negative: leaves); NaN where a head is given.
+    head : (m,) float array
+        Head behind the end; not read where a flow is given.
+    resistance : (m,) float array
+        Resistance between the node and that head; 0 holds the node at the head itself.
     """
 
-    fixed_node: IntArray = field(default_factory=_no_nodes)
-    fixed_head: FloatArray = field(default_factory=_none)
-    flow_node: IntArray = field(default_factory=_no_nodes)
-    inflow: FloatArray = field(default_factory=_none)
-    far_node: IntArray = field(default_factory=_no_nodes)
-    far_resistance: FloatArray = field(default_factory=_none)
-    far_head: FloatArray = field(default_factory=_none)
+    node: IntArray
+    inflow: FloatArray
+    head: FloatArray
+    resistance: FloatArray
 
 
 @dataclass(frozen=True, eq=False)
@@ -55,27 +44,20 @@ class Solution:
     head : (n,) float array
     flow : (e,) float array
         Positive from → to.
-    fixed_inflow : (f,) float array
-        Flow into the network at the nodes whose head is held.
-    far_outflow : (k,) float array
-        Flow out of the network to the far heads.
+    inflow : (m,) float array
+        Flow into the network at each end.
     imbalance : float
-        Largest unbalanced flow at any node.
+        Largest unbalanced flow at any node, the flows at the ends counted.
     """
 
     head: FloatArray
     flow: FloatArray
-    fixed_inflow: FloatArray
-    far_outflow: FloatArray
+    inflow: FloatArray
     imbalance: float
 
 
 def solve_between(
-    n_nodes: int,
-    from_node: npt.ArrayLike,
-    to_node: npt.ArrayLike,
-    conductance: npt.ArrayLike,
-    boundary: Boundary,
+    n_nodes: int, from_node: npt.ArrayLike, to_node: npt.ArrayLike, conductance: npt.ArrayLike, boundary: Boundary
 ) -> Solution:
     """Solve a network between its ends.
 
@@ -93,25 +75,31 @@ def solve_between(
     Raises
     ------
     ModelError
-        As :func:`geomprep.solve.factorise`; a part of the network reaches neither a
-        held head nor a far head.
+        As :func:`geomprep.solve.factorise`: a part of the network reaches no head, among
+        others; a resistance is negative or a node is held twice.
 
     Examples
     --------
-    >>> ends = Boundary(flow_node=np.array([0]), inflow=np.array([2.0]), far_node=np.array([1]),
-    ...                 far_resistance=np.array([3.0]), far_head=np.array([10.0]))
-    >>> solve_between(2, [0], [1], [0.5], ends).head
-    array([20., 16.])
+    >>> ends = Boundary(np.array([0, 1]), np.array([2.0, np.nan]), np.array([0.0, 10.0]), np.array([0.0, 4.0]))
+    >>> found = solve_between(2, [0], [1], [0.5], ends)
+    >>> found.head.tolist(), found.inflow.round(9).tolist()
+    ([22.0, 18.0], [2.0, -2.0])
     """
+    given = np.isfinite(boundary.inflow)
+    far = ~given & (boundary.resistance != 0)
+    held = ~given & (boundary.resistance == 0)
+    if not (boundary.resistance[far] > 0).all():
+        raise ModelError(f"resistance {boundary.resistance[far].min():g} at an end: it must be 0 or above")
     size, tail, head, value = with_far_nodes(
-        n_nodes, (from_node, to_node, conductance), boundary.far_node, 1.0 / boundary.far_resistance
+        n_nodes, (from_node, to_node, conductance), boundary.node[far], 1.0 / boundary.resistance[far]
     )
-    n_edges = len(tail) - len(boundary.far_node)
-    far = np.arange(n_nodes, size)
-    network = factorise(size, tail, head, value, np.concatenate((boundary.fixed_node, far)))
-    inflow = np.bincount(boundary.flow_node, boundary.inflow, size).astype(np.float64)
-    found, flow = heads_and_flows(network, np.concatenate((boundary.fixed_head, boundary.far_head)), inflow)
-    out = net_outflow(size, tail, head, flow)[:n_nodes] - inflow[:n_nodes]
-    at_fixed = out[boundary.fixed_node]
-    out[boundary.fixed_node] = 0.0
-    return Solution(found[:n_nodes], flow[:n_edges], at_fixed, flow[n_edges:], float(np.abs(out).max(initial=0.0)))
+    network = factorise(size, tail, head, value, np.concatenate((boundary.node[held], np.arange(n_nodes, size))))
+    source = np.bincount(boundary.node[given], boundary.inflow[given], size).astype(np.float64)
+    found, flow = heads_and_flows(network, np.concatenate((boundary.head[held], boundary.head[far])), source)
+    n_edges = len(tail) - np.count_nonzero(far)
+    out = net_outflow(size, tail, head, flow)[:n_nodes] - source[:n_nodes]
+    inflow = boundary.inflow.copy()
+    inflow[held] = out[boundary.node[held]]
+    inflow[far] = -flow[n_edges:]
+    out[boundary.node[held]] = 0.0
+    return Solution(found[:n_nodes], flow[:n_edges], inflow, float(np.abs(out).max(initial=0.0)))
