@@ -205,4 +205,5 @@ _RADIUS_OF: Final[dict[str, tuple[str, Callable[[float], float]]]] = {
     "diameter": ("length", lambda diameter: diameter / 2),
     "area": ("area", lambda area: math.sqrt(area / math.pi)),
 }
-_HELD: Final[dict[str, Callable[[str, dict[str, Any]], dict[str, Any]]]] = {"value": _value, "relation": _relation, "exponents": _exponents, "size": _size}
+_Reader = Callable[[str, dict[str, Any]], dict[str, Any]]
+_HELD: Final[dict[str, _Reader]] = {"value": _value, "relation": _relation, "exponents": _exponents, "size": _size}
