@@ -12,10 +12,16 @@ from __future__ import annotations
 import sys
 from pathlib import Path
 
+from maker.defects import write_neck_veins_rough
+from maker.head_arteries import write_head_arteries
 from maker.limb import write_limb
+from maker.neck_veins import write_neck_veins
 
 WRITERS = {
+    "head-arteries": write_head_arteries,
     "limb": write_limb,
+    "neck-veins": write_neck_veins,
+    "neck-veins-rough": write_neck_veins_rough,
 }
 """Folder of each sample and the function that fills it."""
 

@@ -13,7 +13,7 @@ import numpy.typing as npt
 from maker.curves import Floats
 from maker.tree import Phantom
 
-__all__ = ["Lines", "private_copies", "shared_points", "write_legacy", "write_xml"]
+__all__ = ["Lines", "private_copies", "repeated_trunks", "shared_points", "write_legacy", "write_xml"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -53,6 +53,35 @@ def private_copies(phantom: Phantom) -> Lines:
         np.concatenate([segment.radius for segment in phantom.segments]),
         tuple(np.arange(first, last) for first, last in pairwise(starts)),
     )
+
+
+def repeated_trunks(phantom: Phantom, routes: Sequence[Sequence[str]]) -> Lines:
+    """Habit: one poly-line per route from an inlet to an outlet; what routes share is repeated exactly.
+
+    Parameters
+    ----------
+    phantom : Phantom
+    routes : sequence of sequence of str
+        Names of the nodes along each route.
+
+    Raises
+    ------
+    ValueError
+        The routes leave out a segment.
+    """
+    drawn = shared_points(phantom)
+    between = {(segment.start, segment.end): line for segment, line in zip(phantom.segments, drawn.lines, strict=True)}
+    runs, used = [], set()
+    for route in routes:
+        pieces = [between[step] if step in between else between[step[::-1]][::-1] for step in pairwise(route)]
+        used |= {frozenset(step) for step in pairwise(route)}
+        runs.append(np.concatenate([pieces[0][:1], *(piece[1:] for piece in pieces)]))
+    if len(used) != len(between):
+        raise ValueError(f"the routes leave out {[pair for pair in between if frozenset(pair) not in used]}")
+    taken = np.concatenate(runs)
+    starts = np.cumsum([0] + [len(run) for run in runs])
+    numbers = tuple(np.arange(first, last) for first, last in pairwise(starts))
+    return Lines(drawn.points[taken], drawn.radius[taken], numbers)
 
 
 def _rows(values: npt.NDArray[np.generic], form: str) -> list[str]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from itertools import pairwise
 
@@ -9,7 +10,7 @@ import numpy as np
 
 from maker.curves import Floats, SplineCurve
 
-__all__ = ["Phantom", "Segment", "Track", "WayPoint", "cut"]
+__all__ = ["Phantom", "Segment", "Track", "WayPoint", "cut", "mirrored"]
 
 WayPoint = tuple[float, float, float, float] | tuple[float, float, float, float, str]
 """x, y, z, radius and, where segments end, the name of the node."""
@@ -117,3 +118,36 @@ def _cut_track(track: Track, spacing: float, decimals: int) -> list[Segment]:
         ends = str(track.way_points[first][-1]), str(track.way_points[last][-1])
         segments.append(Segment(name, *ends, points, radius, float(end - begin)))
     return segments
+
+
+def mirrored(
+    track: Track, size: float, sway: tuple[float, float, float], lacking: str = "", segments: tuple[str, ...] = ()
+) -> Track:
+    """Return the right-hand counterpart of a left-hand track.
+
+    Parameters
+    ----------
+    track : Track
+    size : float
+        Factor on its radii.
+    sway : (float, float, float)
+        Largest shift of the course against the exact mirror, in the middle between two nodes
+        (nodes stay exact mirrors).
+    lacking : str
+        Node of the left track that the right side lacks.
+    segments : tuple of str
+        Names on the right; those of the left with the side exchanged where none are given.
+    """
+    nodes = [number for number, way in enumerate(track.way_points) if len(way) == 5]
+    way_points: list[WayPoint] = []
+    for number, way in enumerate(track.way_points):
+        before, after = max(n for n in nodes if n <= number), min(n for n in nodes if n >= number)
+        lean = math.sin(math.pi * (number - before) / (after - before)) if after > before else 0.0
+        x, y, z = (value + lean * shift for value, shift in zip((-way[0], *way[1:3]), sway, strict=True))
+        radius = round(way[3] * size, 3)
+        if len(way) == 5 and way[4] != lacking:
+            way_points.append((x, y, z, radius, way[4].replace("left", "right")))
+        else:
+            way_points.append((x, y, z, radius))
+    names = segments or tuple(name.replace("left", "right") for name in track.segments)
+    return Track(names, tuple(way_points))
