@@ -7,7 +7,6 @@ import tempfile
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
-from typing import BinaryIO
 
 from geomprep.errors import InputError
 
@@ -80,7 +79,7 @@ def _settle(new: Path, final: Path) -> None:
 
 
 @contextmanager
-def atomic_writer(path: str | Path) -> Iterator[BinaryIO]:
+def atomic_writer(path: str | Path) -> Iterator[BufferedRandom]:
     """Give a stream whose content takes the place of `path` when the block ends well.
 
     Parameters

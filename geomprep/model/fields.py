@@ -161,8 +161,7 @@ def _by_path() -> dict[str, Field]:
 def _tables() -> dict[str, FieldTable]:
     """Tables as read from the file, once per process."""
     source = resources.files("geomprep.model").joinpath("fields.csv")
-    with source.open(encoding="utf-8", newline="") as stream:
-        rows = list(csv.DictReader(stream))
+    rows = list(csv.DictReader(source.read_text(encoding="utf-8").splitlines()))
     fields: dict[str, list[Field]] = {}
     for row in rows:
         fields.setdefault(row["table"], [])
