@@ -169,8 +169,8 @@ def _ask_meaning(
     best = _best_by(tuple(inside) or ranked, "meaning", None)
     candidates, evidence = [], []
     for hypothesis in best:
-        for meaning in SIZE_MEANINGS:
-            if hypothesis.meaning in meaning:
+        for meaning, shape in SIZE_MEANINGS.items():
+            if hypothesis.meaning == shape:
                 candidates.append(meaning)
                 evidence.append(_evidence(hypothesis))
     text = (
@@ -182,8 +182,7 @@ def _ask_meaning(
 
 def _stated_meaning(statement: InputStatement) -> str | None:
     """Radius, diameter or area, where stated."""
-    stated = statement.size_means
-    return stated and stated.split()[-1]
+    return SIZE_MEANINGS.get(statement.size_means or "")
 
 
 def _best_by(ranked: tuple[Hypothesis, ...], field: str, meaning: str | None) -> tuple[Hypothesis, ...]:
@@ -197,7 +196,8 @@ def _best_by(ranked: tuple[Hypothesis, ...], field: str, meaning: str | None) ->
 
 def _evidence(hypothesis: Hypothesis) -> str:
     """Score and numbers of a reading."""
-    return f"score {hypothesis.score:.2f}: {', '.join(hypothesis.evidence)}"
+    score = f"{hypothesis.score:.2f}" if hypothesis.score >= 0.005 else "below 0.01"
+    return f"score {score}: {', '.join(hypothesis.evidence)}"
 
 
 def _scale_findings(
@@ -218,14 +218,19 @@ def _scale_findings(
     found = []
     if best.score > _RIVAL * stated.score:
         message = (
-            f"{said} fits the numbers {best.score / max(stated.score, 1e-300):.2g} times worse than "
-            f"{best.unit}, {best.meaning}: {', '.join(stated.evidence)}; nothing was rescaled"
+            f"{said} fits published sizes {_times(best.score, stated.score)} worse than read as {best.unit}, "
+            f"{best.meaning}: {', '.join(stated.evidence)}; nothing was rescaled"
         )
         found.append(Finding("scale", Severity.WARNING, message, key, value=stated.median_radius, unit="m"))
     if meaning and len(size.named) == 1 and meaning not in size.named:
         message = f"{statement.file}: size_means says '{statement.size_means}', but the array is called '{size.name}'"
         found.append(Finding("size meaning", Severity.WARNING, message, key))
     return found
+
+
+def _times(better: float, worse: float) -> str:
+    """How many times one score exceeds another, in words that claim no precision."""
+    return "more than 1000 times" if better > 1000.0 * worse else f"about {better / worse:.0f} times"
 
 
 def _frame_findings(statement: InputStatement, posture: str | None) -> list[Finding]:

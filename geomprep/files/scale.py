@@ -15,12 +15,13 @@ from typing import TYPE_CHECKING, Final
 import numpy as np
 
 from geomprep.files.size_arrays import SizeArray
+from geomprep.literature import plausible_radius, size_rows
 from geomprep.units import length_factor
 
 if TYPE_CHECKING:
     from geomprep.files.contents import FileContents
 
-__all__ = ["UNITS", "Hypothesis", "SizeNorm", "hypotheses", "length_text", "size_norms"]
+__all__ = ["UNITS", "Hypothesis", "hypotheses", "length_text"]
 
 UNITS: Final = ("mm", "cm", "m", "um", "in")
 """Length units that are tried."""
@@ -29,14 +30,16 @@ _MEANINGS: Final = ("radius", "diameter", "area")
 _NAME_WEIGHT: Final = 0.9
 """Weight of what the name of an array says about its meaning."""
 _UNNAMED: Final = {"radius": 0.5, "diameter": 0.35, "area": 0.15}
-_EXTENT: Final = (0.02, 2.0)
-"""Diagonal of the lines in metres: one fork to a whole body."""
+_EXTENT: Final = (0.05, 2.0)
+"""Diagonal of the lines in metres, nearly always: one organ to a whole body."""
 _LARGEST_VOLUME: Final = 6e-3
 """m³; more than the blood of an adult."""
 _VOXELS_ACROSS: Final = (2.0, 40.0)
 """Lumen diameter in voxels of lines traced in an image."""
-_VOXELS_A_STEP: Final = (0.1, 5.0)
-"""Distance of neighbouring points in voxels."""
+_VOXELS_A_STEP: Final = (0.2, 2.0)
+"""Distance of neighbouring points in voxels, mostly; lines may have been resampled."""
+_STEP_WEIGHT: Final = -2.0
+"""The most that spacing may speak against a reading (a factor of 7)."""
 _LEAST_SPREAD: Final = 0.5
 """Least spread of ln(radius) that is allowed for: a factor of 1.6 up or down."""
 _CAPILLARY: Final = 2e-6
@@ -45,16 +48,6 @@ _WIDEST: Final = 0.03
 """m; wider than any vessel but a large aneurysm."""
 _LONGEST: Final = 2.5
 """m; longer than a body."""
-
-
-@dataclass(frozen=True)
-class SizeNorm:
-    """Published radius of one vessel, metres."""
-
-    vessel: str
-    low: float
-    high: float
-    source: str
 
 
 @dataclass(frozen=True)
@@ -87,48 +80,6 @@ class Hypothesis:
     diagonal: float
     length: float
     volume: float
-
-
-def _norm(vessel: str, low_mm: float, high_mm: float, source: str) -> SizeNorm:
-    """A published diameter interval in millimetres as radius in metres."""
-    return SizeNorm(vessel, low_mm * 0.5e-3, high_mm * 0.5e-3, source)
-
-
-_ARTERIES: Final = (
-    _norm("ascending aorta", 21.8, 23.9, "doi 10.3389/fphys.2021.734311"),
-    _norm("thoracic aorta", 16.1, 21.6, "doi 10.3389/fphys.2021.734311"),
-    _norm("subclavian artery", 4.6, 8.8, "doi 10.3389/fphys.2021.734311"),
-    _norm("radial artery", 2.8, 3.5, "doi 10.3389/fphys.2021.734311"),
-    _norm("common carotid artery", 5.3, 7.5, "doi 10.1161/01.STR.0000206440.48756.f7"),
-    _norm("internal carotid artery", 3.8, 6.0, "doi 10.1161/01.STR.0000206440.48756.f7"),
-    _norm("basilar artery", 1.9, 4.15, "doi 10.3889/oamjms.2017.160"),
-    _norm("middle cerebral artery", 2.45, 4.34, "doi 10.3889/oamjms.2017.160"),
-    _norm("anterior cerebral artery", 1.1, 2.93, "doi 10.3889/oamjms.2017.160"),
-    _norm("posterior cerebral artery", 0.9, 2.8, "doi 10.3889/oamjms.2017.160"),
-    _norm("posterior communicating artery", 0.9, 2.1, "doi 10.3889/oamjms.2017.160"),
-)
-_VEINS: Final = (
-    _norm("internal jugular vein", 5.9, 10.2, "doi 10.1371/journal.pone.0149532"),
-    _norm("transverse sinus", 4.0, 8.2, "doi 10.3868/j.issn.2096-0689.2024.01.003"),
-    _norm("superior sagittal sinus", 5.6, 7.9, "PMID 28286027"),
-    _norm("internal jugular vein, widest", 10.3, 20.7, "doi 10.1186/cc8200"),
-)
-
-
-def size_norms(vessels: str | None) -> tuple[SizeNorm, ...]:
-    """Return published radii of a vessel class, in metres.
-
-    Parameters
-    ----------
-    vessels : str or None
-        ``arteries``, ``veins``, ``both`` or None for both.
-
-    Examples
-    --------
-    >>> size_norms("veins")[0].vessel
-    'internal jugular vein'
-    """
-    return {"arteries": _ARTERIES, "veins": _VEINS}.get(vessels or "", _ARTERIES + _VEINS)
 
 
 @dataclass(frozen=True)
@@ -192,12 +143,17 @@ def hypotheses(
     if not size.positive:
         return ()
     drawn = _drawn(contents, size)
-    norms = size_norms(vessels)
+    vessel_class = {"arteries": "artery", "veins": "vein"}.get(vessels or "", "any")
     found = []
     for unit in UNITS:
         for meaning in _MEANINGS:
             reading = _reading(drawn, size, length_factor(unit), meaning)
-            judged = [_median(reading, norms), _largest(reading, norms), _extent(reading), _volume(reading)]
+            judged = [
+                _median(reading, vessel_class),
+                _largest(reading, vessel_class),
+                _extent(reading),
+                _volume(reading),
+            ]
             judged += _voxels(reading, voxel) if voxel else []
             weight = sum(each.weight for each in judged) + math.log(_name_weight(size, meaning))
             found.append((weight, unit, meaning, reading, judged))
@@ -289,28 +245,31 @@ def _bell(distance: float, spread: float) -> float:
     return -0.5 * min(abs(distance) / spread, 40.0) ** 2
 
 
-def _median(reading: _Reading, norms: tuple[SizeNorm, ...]) -> _Judged:
+def _inside(value: float, low: float, high: float) -> float:
+    """Bell curve over ln(value) that has 95 % of itself (two spreads either way) in an interval."""
+    distance = math.log(value / math.sqrt(low * high)) if value > 0.0 else math.inf
+    return _bell(distance, 0.25 * math.log(high / low))
+
+
+def _median(reading: _Reading, vessel_class: str) -> _Judged:
     """The median radius against the middle of the published vessels."""
-    middles = np.log([math.sqrt(norm.low * norm.high) for norm in norms])
+    middles = np.log([math.sqrt(row.low * row.high) for row in size_rows(vessel_class) if row.low and row.high])
     spread = max(float(middles.std()), _LEAST_SPREAD)
     weight = _bell(math.log(reading.median) - float(middles.mean()), spread)
-    low, high = min(norm.low for norm in norms), max(norm.high for norm in norms)
-    text = f"median radius {length_text(reading.median)} (published {length_text(low)} to {length_text(high)})"
+    low, high = plausible_radius(vessel_class)
+    text = f"median radius {length_text(reading.median)} (plausible {length_text(low)} to {length_text(high)})"
     return _Judged(weight, text, reading.median < _CAPILLARY)
 
 
-def _largest(reading: _Reading, norms: tuple[SizeNorm, ...]) -> _Judged:
-    """The largest radius against the widest published vessel."""
-    low, high = min(norm.low for norm in norms), max(norm.high for norm in norms)
-    weight = _bell(_outside(reading.largest, low, high), _LEAST_SPREAD)
+def _largest(reading: _Reading, vessel_class: str) -> _Judged:
+    """The largest radius against the plausible ones."""
+    weight = _bell(_outside(reading.largest, *plausible_radius(vessel_class)), _LEAST_SPREAD)
     return _Judged(weight, f"largest radius {length_text(reading.largest)}", reading.largest > _WIDEST)
 
 
 def _extent(reading: _Reading) -> _Judged:
     """The diagonal of the lines against the human body."""
-    low, high = _EXTENT
-    middle, spread = 0.5 * math.log(low * high), 0.5 * math.log(high / low)
-    weight = _bell(math.log(reading.diagonal) - middle, spread) if reading.diagonal > 0 else _bell(9.9, spread)
+    weight = _inside(reading.diagonal, *_EXTENT)
     text = f"box diagonal {length_text(reading.diagonal)}, total length {length_text(reading.length)}"
     return _Judged(weight, text, reading.diagonal > _LONGEST)
 
@@ -327,7 +286,8 @@ def _voxels(reading: _Reading, voxel: tuple[float, float, float]) -> list[_Judge
     across, step = 2.0 * reading.median / edge, reading.step / edge
     judged = [_Judged(_bell(_outside(across, *_VOXELS_ACROSS), 0.5), f"{across:.3g} voxels across the median lumen")]
     if step > 0:
-        judged.append(_Judged(_bell(_outside(step, *_VOXELS_A_STEP), 0.5), f"points {step:.3g} voxels apart"))
+        weight = max(_inside(step, *_VOXELS_A_STEP), _STEP_WEIGHT)
+        judged.append(_Judged(weight, f"points {step:.3g} voxels apart"))
     return judged
 
 

@@ -6,8 +6,8 @@ from dataclasses import dataclass
 
 __all__ = ["FRAME_AXES", "SIZE_MEANINGS", "InputStatement"]
 
-SIZE_MEANINGS = ("inscribed radius", "equal-area radius", "diameter", "area")
-"""What a size array may hold."""
+SIZE_MEANINGS = {"inscribed radius": "radius", "equal-area radius": "radius", "diameter": "diameter", "area": "area"}
+"""What a size array may hold -> how a radius is made from it."""
 
 FRAME_AXES = ("LR", "PA", "SI")
 """The three axes of the body; a frame names one end of each."""
