@@ -7,6 +7,7 @@ import tempfile
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
+from typing import BinaryIO
 
 from geomprep.errors import InputError
 
@@ -79,7 +80,7 @@ def _settle(new: Path, final: Path) -> None:
 
 
 @contextmanager
-def atomic_writer(path: str | Path) -> Iterator[BufferedRandom]:
+def atomic_writer(path: str | Path) -> Iterator[BinaryIO]:
     """Give a stream whose content takes the place of `path` when the block ends well.
 
     Parameters

@@ -12,7 +12,7 @@ from typing import IO, Any, Final
 import numpy as np
 import numpy.typing as npt
 
-from geomprep.atomic import atomic_writer
+from geomprep.atomic import replacing
 from geomprep.errors import NetworkFileError
 from geomprep.model import Field, field_tables
 
@@ -55,17 +55,17 @@ def write_companion(folder: Path, stations: Mapping[str, Any]) -> dict[str, Any]
         The folder is not writable or full.
     """
     first = folder / "stations.npz"
-    with atomic_writer(first) as stream:
-        _write_zip(stream, stations)
-        stream.seek(0)
-        digest = hashlib.file_digest(stream, "sha256").hexdigest()
+    with replacing(first) as new:
+        _write_zip(new, stations)
+        with new.open("rb") as stream:
+            digest = hashlib.file_digest(stream, "sha256").hexdigest()
     first.replace(folder / f"stations-{digest[:16]}.npz")
     return {"file": f"stations-{digest[:16]}.npz", "sha256": digest, "count": len(stations["distance"])}
 
 
-def _write_zip(stream: IO[bytes], stations: Mapping[str, Any]) -> None:
+def _write_zip(path: Path, stations: Mapping[str, Any]) -> None:
     """Store each column uncompressed, with nothing of this machine or this hour in it."""
-    with zipfile.ZipFile(stream, "w", zipfile.ZIP_STORED) as archive:
+    with zipfile.ZipFile(path, "w", zipfile.ZIP_STORED) as archive:
         for row in companion_fields():
             column = np.ascontiguousarray(stations[row.name], dtype=_DTYPE[row.type])
             member = zipfile.ZipInfo(f"{row.name}.npy", _LONG_AGO)
