@@ -1,0 +1,173 @@
+"""The graph while it is being joined: every stated radius kept at the edge that stated it."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+
+from geomprep.model import FloatArray, IntArray, Uint8Array, degrees
+
+__all__ = ["Draft", "compacted", "degree", "lengths", "merged", "point_radius", "without_edges"]
+
+
+@dataclass(frozen=True, eq=False)
+class Draft:
+    """Points and edges between two steps of joining.
+
+    Attributes
+    ----------
+    points : (n, 3) float array
+    vessel_class, input_id, radius_basis : (n,) uint8 array
+    source_point : (n,) int array
+        Raw point with the smallest raw coordinates of those merged here; −1 inserted.
+    edges : (e, 2) int array
+        In the order of the lines.
+    end_radius : (e, 2) float array
+        Radius that the line stated at both ends of each edge.
+    edge_class : (e,) uint8 array
+        Vessel class of the line.
+    merged_into : (n_raw,) int array
+        Point that each raw point ended in, :data:`PointGraph.UNUSED` where no line uses it.
+    raw_points : (n_raw, 3) array
+    """
+
+    points: FloatArray
+    vessel_class: Uint8Array
+    input_id: Uint8Array
+    radius_basis: Uint8Array
+    source_point: IntArray
+    edges: IntArray
+    end_radius: FloatArray
+    edge_class: Uint8Array
+    merged_into: IntArray
+    raw_points: npt.NDArray[Any]
+
+
+def degree(draft: Draft) -> IntArray:
+    """Number of edge ends at each point."""
+    return degrees(len(draft.points), draft.edges)
+
+
+def point_radius(draft: Draft) -> FloatArray:
+    """Largest radius stated at each point."""
+    radius = np.zeros(len(draft.points))
+    np.maximum.at(radius, draft.edges.ravel(), draft.end_radius.ravel())
+    return radius
+
+
+def lengths(draft: Draft) -> FloatArray:
+    """Length of each edge."""
+    step = draft.points[draft.edges[:, 1]] - draft.points[draft.edges[:, 0]]
+    length: FloatArray = np.sqrt(np.einsum("ij,ij->i", step, step))
+    return length
+
+
+def without_edges(draft: Draft, dropped: npt.NDArray[np.bool_]) -> Draft:
+    """The draft without the edges marked."""
+    if not dropped.any():
+        return draft
+    kept = ~dropped
+    return replace(draft, edges=draft.edges[kept], end_radius=draft.end_radius[kept], edge_class=draft.edge_class[kept])
+
+
+def merged(draft: Draft, label: IntArray, moved: bool = True) -> Draft:
+    """Merge points of one label; a merged point lies at the mean of its members.
+
+    Parameters
+    ----------
+    draft : Draft
+    label : (n,) int array
+        New number of each point, 0 … k − 1, none left out.
+    moved : bool
+        False leaves each merged point where its member with the smallest number lies.
+    """
+    count = int(label.max(initial=-1)) + 1
+    members = np.bincount(label, minlength=count)
+    first = np.empty(count, np.int64)
+    first[label[::-1]] = np.arange(len(label) - 1, -1, -1)
+    new = replace(
+        draft,
+        points=draft.points[first],
+        vessel_class=draft.vessel_class[first],
+        input_id=draft.input_id[first],
+        radius_basis=draft.radius_basis[first],
+        source_point=draft.source_point[first],
+        edges=label[draft.edges],
+        merged_into=_relabelled(draft.merged_into, label),
+    )
+    several = np.flatnonzero(members[label] > 1)
+    if len(several):
+        _settle(draft, new, several, label, moved)
+    return new
+
+
+def _settle(draft: Draft, new: Draft, several: IntArray, label: IntArray, moved: bool) -> None:
+    """Give merged points the place, class and source of all their members (in place, on fresh arrays)."""
+    ordered = several[_source_order(draft, several)]
+    ordered = ordered[np.argsort(label[ordered], kind="stable")]
+    starts = np.flatnonzero(np.diff(label[ordered], prepend=-1))
+    target = label[ordered[starts]]
+    leader = ordered[starts]  # the member whose raw coordinates come first
+    new.source_point[target] = draft.source_point[leader]
+    new.input_id[target] = draft.input_id[leader]
+    new.vessel_class[target] = np.maximum.reduceat(draft.vessel_class[ordered], starts)
+    new.radius_basis[target] = np.maximum.reduceat(draft.radius_basis[ordered], starts)
+    if moved:
+        count = np.diff(np.append(starts, len(ordered)))
+        new.points[target] = np.add.reduceat(draft.points[ordered], starts) / count[:, None]
+
+
+def _source_order(draft: Draft, which: IntArray) -> IntArray:
+    """Order of points by the raw coordinates they stand for; inserted points by place, last."""
+    source = draft.source_point[which]
+    rows = np.where((source >= 0)[:, None], draft.raw_points[source], draft.points[which])
+    return np.lexsort((rows[:, 2], rows[:, 1], rows[:, 0], source < 0)).astype(np.int64)
+
+
+def _relabelled(merged_into: IntArray, label: IntArray) -> IntArray:
+    """Follow raw points into new numbers; negative entries stay."""
+    if len(label) == 0:
+        return merged_into
+    return np.where(merged_into >= 0, label[np.maximum(merged_into, 0)], merged_into)
+
+
+def compacted(draft: Draft) -> tuple[Draft, IntArray]:
+    """Leave out points without edges and number the rest along the edges.
+
+    Returns
+    -------
+    Draft
+        Raw points that ended in a point without edges have −1 in `merged_into`.
+    lost : (k,) int array
+        Those raw points.
+    """
+    flat = draft.edges.ravel()
+    first = np.full(len(draft.points), -1, np.int64)
+    first[flat[::-1]] = np.arange(len(flat) - 1, -1, -1)  # place of the first mention
+    used = np.flatnonzero(first >= 0)
+    mentioned = np.zeros(len(flat), np.bool_)
+    mentioned[first[used]] = True
+    order = flat[mentioned]
+    number = np.full(len(draft.points), -1, np.int64)
+    number[order] = np.arange(len(order))
+    followed = _relabelled(draft.merged_into, number)
+    lost = np.flatnonzero((draft.merged_into >= 0) & (followed == -1)) if len(order) < len(number) else _NONE
+    return (
+        replace(
+            draft,
+            points=draft.points[order],
+            vessel_class=draft.vessel_class[order],
+            input_id=draft.input_id[order],
+            radius_basis=draft.radius_basis[order],
+            source_point=draft.source_point[order],
+            edges=number[draft.edges],
+            merged_into=followed,
+        ),
+        lost,
+    )
+
+
+_NONE = np.empty(0, np.int64)

@@ -1,0 +1,144 @@
+"""Join lines into one graph: the order of the steps."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from geomprep.errors import InputError
+from geomprep.findings import Finding, Severity
+from geomprep.model import Basis, Centrelines, PointGraph, Repair, anchor_ids
+from geomprep.repair.accept import refuse_unusable
+from geomprep.repair.classes import class_findings
+from geomprep.repair.coincident import join_near_ends
+from geomprep.repair.doubled import single_edges
+from geomprep.repair.draft import Draft, compacted
+from geomprep.repair.parts import isolated_parts
+from geomprep.repair.radii import settled_radii
+from geomprep.repair.settings import JoinSettings
+from geomprep.repair.start import started
+
+__all__ = ["JoinResult", "join"]
+
+
+@dataclass(frozen=True, eq=False)
+class JoinResult:
+    """What joining gives.
+
+    Attributes
+    ----------
+    graph : PointGraph
+    repairs : tuple of Repair
+        What was changed beyond taking points at one place as one.
+    findings : tuple of Finding
+    """
+
+    graph: PointGraph
+    repairs: tuple[Repair, ...]
+    findings: tuple[Finding, ...]
+
+
+def join(centrelines: Centrelines, settings: JoinSettings | None = None) -> JoinResult:
+    """Join lines into one graph of points and edges, within each vessel class.
+
+    Points at identical coordinates are one point; ends that nearly coincide merge;
+    an edge drawn several times counts once. Arteries join arteries and veins join
+    veins; lines of unknown class join any, with a finding.
+
+    Parameters
+    ----------
+    centrelines : Centrelines
+        Lines through points with radii, in SI.
+    settings : JoinSettings, optional
+        Limits in parts of the local radius.
+
+    Returns
+    -------
+    JoinResult
+        The graph accounts for every raw point in its `merged_into`.
+
+    Raises
+    ------
+    InputError
+        There is no line, a line has fewer than two points, or a used point has no
+        radius above zero.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> points = np.array([[0.0, 0, 0], [1, 0, 0], [1, 0, 0], [2, 0, 0]]) * 1e-2
+    >>> two = Centrelines(points, [1e-3] * 4, points, [0, 1, 2, 3], [0, 2, 4], [1, 1], [0, 0], [0] * 4)
+    >>> join(two).graph.edges.tolist()
+    [[0, 1], [1, 2]]
+    """
+    settings = settings or JoinSettings()
+    refuse_unusable(centrelines)
+    draft, findings = started(centrelines)
+    draft, single = single_edges(draft, settings.radii_agree_within)
+    findings += single
+    draft, joined, wide = join_near_ends(draft, settings.tolerance)
+    findings += wide
+    if joined:
+        draft, single = single_edges(draft, settings.radii_agree_within)
+        findings += (_joined_finding(joined, settings.tolerance), *single)
+    if len(draft.edges) == 0:
+        raise InputError("every line lies within one point; a network needs at least one line with a length")
+    draft, repairs = _without_lost_points(draft)
+    graph, radius_findings = _finished(draft)
+    findings += radius_findings
+    findings += class_findings(centrelines.vessel_class, draft.edge_class, draft.edges, draft.points)
+    findings += isolated_parts(draft, graph.radius)
+    return JoinResult(graph, repairs, findings)
+
+
+def _joined_finding(joined: int, tolerance: float) -> Finding:
+    """Say how many ends merged within the tolerance."""
+    return Finding(
+        "near ends merged",
+        Severity.NOTE,
+        f"{joined} line ends within {tolerance:g} of the radius of another were merged with it",
+        value=float(joined),
+    )
+
+
+def _without_lost_points(draft: Draft) -> tuple[Draft, tuple[Repair, ...]]:
+    """Leave out points without edges; record the lines that shrank to one place."""
+    kept, lost = compacted(draft)
+    if len(lost) == 0:
+        return kept, ()
+    merged_into = kept.merged_into.copy()
+    merged_into[lost] = -1
+    x, y, z = draft.points[draft.merged_into[lost[0]]].tolist()
+    record = Repair(
+        id=str(anchor_ids("line-of-no-length", draft.raw_points, lost[None])[0]),
+        kind="line of no length",
+        reason=f"{len(lost)} points belong to lines all of whose points lie at one place",
+        position=(x, y, z),
+        choice="drop",
+        options=("drop",),
+        raw_points=tuple(lost.tolist()),
+    )
+    return replace(kept, merged_into=merged_into), (record,)
+
+
+def _finished(draft: Draft) -> tuple[PointGraph, tuple[Finding, ...]]:
+    """The point graph of a draft."""
+    radii = settled_radii(draft)
+    graph = PointGraph(
+        points=draft.points,
+        radius=radii.radius,
+        radius_basis=radii.basis,
+        vessel_class=draft.vessel_class,
+        input_id=draft.input_id,
+        protected=np.zeros(len(draft.points), np.bool_),
+        source_point=draft.source_point,
+        edges=draft.edges,
+        edge_basis=np.full(len(draft.edges), Basis.MEASURED, np.uint8),
+        merged_into=draft.merged_into,
+        raw_points=draft.raw_points,
+        own_radius_edge=radii.own_edge,
+        own_radius_end=radii.own_end,
+        own_radius=radii.own_radius,
+    )
+    return graph, radii.findings
