@@ -41,13 +41,16 @@ def anchor_ids(kind: str, raw_points: npt.NDArray[Any], anchors: IntArray) -> Te
     >>> second == first + "-2"
     True
     """
-    raw = np.ascontiguousarray(raw_points) + 0.0  # −0.0 and 0.0 are the same place
+    raw = raw_points[anchors.ravel()] + 0.0  # −0.0 and 0.0 are the same place
     width = raw.dtype.itemsize * 3
     data = raw.astype(raw.dtype.newbyteorder("<")).tobytes()
+    places = range(0, len(data), width)
+    rows = zip(*[iter([data[place : place + width] for place in places])] * anchors.shape[1], strict=True)
+    known = (anchors >= 0).tolist()
     found: list[str] = []
-    for row in anchors.tolist():
-        parts = sorted(data[width * point : width * (point + 1)] for point in row if point >= 0)
-        found.append(f"{kind}-{hashlib.blake2b(b''.join(parts), digest_size=_DIGEST_BYTES).hexdigest()}")
+    for row, used in zip(rows, known, strict=True):
+        anchor = b"".join(sorted(part for part, use in zip(row, used, strict=True) if use))
+        found.append(f"{kind}-{hashlib.blake2b(anchor, digest_size=_DIGEST_BYTES).hexdigest()}")
     return texts("id", _told_apart(found))
 
 

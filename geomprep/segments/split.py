@@ -60,7 +60,7 @@ def split(graph: PointGraph) -> Network:
     Network(2 nodes, 1 segments, 3 stations; origins)
     """
     cut = _canonical_chains(graph)
-    rank = _raw_rank(graph)
+    rank = _raw_rank(graph, _deciding_points(cut))
     node_point = _node_points(cut, rank)
     node_of = np.full(graph.n_points, -1, np.int64)
     node_of[node_point] = np.arange(len(node_point))
@@ -83,15 +83,27 @@ _ORIGINS = (
 )
 
 
-def _raw_rank(graph: PointGraph) -> IntArray:
-    """Rank of each graph point by its raw coordinates; inserted points by their position, last."""
-    rank = np.empty(graph.n_points, np.int64)
-    known = np.flatnonzero(graph.source_point >= 0)
-    inserted = np.flatnonzero(graph.source_point < 0)
+def _raw_rank(graph: PointGraph, which: IntArray) -> IntArray:
+    """Rank of some graph points by their raw coordinates; inserted points by their position, last."""
+    rank = np.full(graph.n_points, -1, np.int64)
+    which = np.unique(which)
+    known, inserted = which[graph.source_point[which] >= 0], which[graph.source_point[which] < 0]
     order = known[raw_order(graph.raw_points, graph.source_point[known])]
     rank[order] = np.arange(len(order))
     rank[inserted[raw_order(graph.points, inserted)]] = len(order) + np.arange(len(inserted))
     return rank
+
+
+def _deciding_points(cut: Chains) -> IntArray:
+    """Points whose raw coordinates decide the order of nodes and segments and their direction."""
+    first, last = cut.offsets[:-1], cut.offsets[1:] - 1
+    return np.concatenate([cut.point[row] for row in (first, last, first + 1, last - 1, *_halfway(cut))])
+
+
+def _halfway(cut: Chains) -> tuple[IntArray, IntArray]:
+    """Rows of the two middle points of each chain; one point twice where its number is odd."""
+    total = cut.offsets[:-1] + cut.offsets[1:] - 1
+    return total // 2, (total + 1) // 2
 
 
 def _canonical_chains(graph: PointGraph) -> Chains:
@@ -99,7 +111,8 @@ def _canonical_chains(graph: PointGraph) -> Chains:
     cut = chains(graph.n_points, graph.edges)
     if not cut.ring.any():
         return cut
-    rank = _raw_rank(graph)
+    on_ring = np.repeat(cut.ring, np.diff(cut.offsets))
+    rank = _raw_rank(graph, cut.point[on_ring])
     stop = np.zeros(graph.n_points, np.bool_)
     for ring in np.flatnonzero(cut.ring):
         around = cut.point[cut.offsets[ring] : cut.offsets[ring + 1]]
@@ -158,7 +171,8 @@ def _own_radii(graph: PointGraph, cut: Chains) -> FloatArray:
 def _segment_order(cut: Chains, node_of: IntArray, rank: IntArray) -> IntArray:
     """Canonical order of segments: by nodes, then by the point halfway."""
     first, last = cut.offsets[:-1], cut.offsets[1:] - 1
-    middle = rank[cut.point[(first + last) // 2]]
+    near, far = (rank[cut.point[row]] for row in _halfway(cut))
+    middle = np.minimum(near, far)
     return np.lexsort((middle, node_of[cut.point[last]], node_of[cut.point[first]])).astype(np.int64)
 
 
@@ -190,7 +204,7 @@ def _nodes(graph: PointGraph, node_point: IntArray) -> Nodes:
 def _segments(graph: PointGraph, cut: Chains, node_of: IntArray) -> Segments:
     """Table of segments; ids hang on both ends and the points halfway."""
     first, last = cut.offsets[:-1], cut.offsets[1:] - 1
-    halfway = [(first + last) // 2, (first + last + 1) // 2]
+    halfway = _halfway(cut)
     anchors = np.stack([graph.source_point[cut.point[row]] for row in (first, last, *halfway)], axis=1)
     undefined = np.full(cut.n_chains, -1)
     return Segments(
