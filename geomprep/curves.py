@@ -12,7 +12,16 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-__all__ = ["Pieces", "arc_length", "interpolate", "line_sums", "piece_integrals", "pieces", "weighted_median"]
+__all__ = [
+    "Pieces",
+    "arc_length",
+    "interpolate",
+    "line_sums",
+    "piece_integrals",
+    "pieces",
+    "resistance_share",
+    "weighted_median",
+]
 
 FloatArray = npt.NDArray[np.float64]
 IntArray = npt.NDArray[np.int64]
@@ -140,6 +149,31 @@ def piece_integrals(step: FloatArray, near: FloatArray, far: FloatArray) -> Floa
         ),
         axis=1,
     )
+
+
+def resistance_share(distance: FloatArray, radius: FloatArray, offsets: IntArray) -> FloatArray:
+    """Return the part of each line's ∫ds/r⁴ that lies before each row, from 0 to 1.
+
+    Parameters
+    ----------
+    distance, radius : (n,) float array
+    offsets : (m + 1,) int array
+
+    Examples
+    --------
+    >>> resistance_share(np.array([0.0, 1.0, 4.0]), np.array([1.0, 1.0, 1.0]), np.array([0, 3]))
+    array([0.  , 0.25, 1.  ])
+    """
+    piece = pieces(offsets)
+    share = piece_integrals(
+        distance[piece.first + 1] - distance[piece.first], radius[piece.first], radius[piece.first + 1]
+    )
+    along = np.zeros(len(distance))
+    counts = np.diff(offsets)
+    along[piece.first + 1] = share[:, 3] / np.repeat(line_sums(share[:, 3], piece.starts), counts - 1)
+    along = np.cumsum(along)
+    result: FloatArray = along - np.repeat(along[offsets[:-1]], counts)
+    return result
 
 
 def weighted_median(values: FloatArray, weights: FloatArray, starts: IntArray) -> FloatArray:

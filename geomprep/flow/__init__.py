@@ -1,4 +1,4 @@
-"""Flow through a finished network."""
+"""Checked before hand-over: the steady state of a network."""
 
 from geomprep.flow.steady import steady_state
 

@@ -7,7 +7,7 @@ import dataclasses
 import numpy as np
 
 from geomprep.curves import interpolate
-from geomprep.model import Basis, FloatArray, IntArray, Junctions, Network, Origin
+from geomprep.model import FloatArray, IntArray, Junctions, Network
 
 __all__ = ["junctions"]
 
@@ -47,13 +47,7 @@ def junctions(network: Network) -> Network:
         direction=_directions(network, segment, end),
         area=np.pi * network.stations.radius[_end_station(network, segment, end)] ** 2,
     )
-    return dataclasses.replace(network, junctions=table, origins=network.origins + _ORIGINS)
-
-
-_ORIGINS = (
-    Origin("junctions.direction", Basis.DERIVED, "stations.position"),
-    Origin("junctions.area", Basis.DERIVED, "stations.radius"),
-)
+    return dataclasses.replace(network, junctions=table)
 
 
 def _end_station(network: Network, segment: IntArray, end: IntArray) -> IntArray:

@@ -7,7 +7,7 @@ import dataclasses
 import numpy as np
 
 from geomprep.curves import Pieces, line_sums, piece_integrals, pieces, weighted_median
-from geomprep.model import Basis, FloatArray, Measures, Network, Origin, Stations
+from geomprep.model import FloatArray, Measures, Network, Stations
 
 __all__ = ["measure_segments"]
 
@@ -50,17 +50,7 @@ def measure_segments(network: Network) -> Network:
         taper=_taper(stations, piece, length),
         tortuosity=_tortuosity(stations, length),
     )
-    return dataclasses.replace(network, measures=measures, origins=network.origins + _ORIGINS)
-
-
-_FROM_PROFILE = (
-    *("length", "volume", "lateral_area", "inverse_area", "inverse_fourth_power", "taper"),
-    *("radii.at_from", "radii.at_to", "radii.for_resistance", "radii.for_volume", "radii.minimum", "radii.median"),
-)
-_ORIGINS = (
-    *(Origin(f"segments.{field}", Basis.DERIVED, "stations.distance, stations.radius") for field in _FROM_PROFILE),
-    Origin("segments.tortuosity", Basis.DERIVED, "stations.position"),
-)
+    return dataclasses.replace(network, measures=measures)
 
 
 def _piece_values(stations: Stations, piece: Pieces) -> tuple[FloatArray, FloatArray, FloatArray]:

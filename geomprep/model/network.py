@@ -336,7 +336,5 @@ class Network:
     def __repr__(self) -> str:
         """Return sizes and the tables that are filled."""
         filled = [name for name in self.__dataclass_fields__ if getattr(self, name) not in (None, ())]
-        return (
-            f"Network({len(self.nodes)} nodes, {len(self.segments)} segments, "
-            f"{len(self.stations)} stations; {', '.join(filled[3:])})"
-        )
+        more = "".join(f", {name}" for name in filled[3:])
+        return f"Network({len(self.nodes)} nodes, {len(self.segments)} segments, {len(self.stations)} stations{more})"

@@ -6,14 +6,12 @@ import numpy as np
 
 from geomprep.curves import arc_length
 from geomprep.model import (
-    Basis,
     BoolArray,
     Chains,
     FloatArray,
     IntArray,
     Network,
     Nodes,
-    Origin,
     PointGraph,
     Segments,
     Stations,
@@ -57,7 +55,7 @@ def split(graph: PointGraph) -> Network:
     ...     raw_points=np.array([[0.0, 0, 0], [1, 0, 0], [2, 0, 0]]),
     ...     own_radius_edge=none, own_radius_end=none, own_radius=none)
     >>> split(graph)
-    Network(2 nodes, 1 segments, 3 stations; origins)
+    Network(2 nodes, 1 segments, 3 stations)
     """
     cut = _canonical_chains(graph)
     rank = _raw_rank(graph, _deciding_points(cut))
@@ -71,16 +69,7 @@ def split(graph: PointGraph) -> Network:
         nodes=_nodes(graph, node_point),
         segments=_segments(graph, cut, node_of),
         stations=_stations(graph, cut, own),
-        origins=_ORIGINS,
     )
-
-
-_ORIGINS = (
-    Origin("nodes.position", Basis.MEASURED, "input points"),
-    Origin("stations.position", Basis.MEASURED, "input points"),
-    Origin("stations.distance", Basis.DERIVED, "stations.position"),
-    Origin("stations.area", Basis.DERIVED, "stations.radius"),
-)
 
 
 def _raw_rank(graph: PointGraph, which: IntArray) -> IntArray:
