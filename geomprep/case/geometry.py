@@ -15,7 +15,7 @@ from geomprep.findings import Finding
 from geomprep.measure import junctions, measure_segments
 from geomprep.model import Centrelines, Network, PointGraph, Repair, concatenate
 from geomprep.repair import JoinSettings, join
-from geomprep.segments import order_segments, orient, resample, split
+from geomprep.segments import leave_out_unreached, order_segments, orient, resample, split
 from geomprep.units import length_factor
 
 __all__ = ["Drawn", "Inputs", "draw_network", "read_inputs"]
@@ -119,12 +119,15 @@ def draw_network(case: Case, centrelines: Centrelines, progress: Progress) -> Dr
     network = _resampled(case, split(joined.graph))
     named = name_segments(network, _names(case))
     ends = resolve_ends(named.network, case.inlets, case.outlets, _metres_per_unit(case))
+    reached = leave_out_unreached(named.network, ends.inlet_nodes, joined.graph.raw_points)
+    if reached.repairs:
+        ends = resolve_ends(reached.network, case.inlets, case.outlets, _metres_per_unit(case))
     progress("orient", 0.6)
     network = orient(ends.network, ends.inlet_nodes, ends.outlet_nodes)
     ordered = order_segments(network, ends.inlet_nodes, ends.outlet_nodes)
     network = junctions(measure_segments(ordered.network))
     findings = (*joined.findings, *named.findings, *ends.findings, *ordered.findings)
-    return Drawn(network, joined.graph, ends, findings, joined.repairs)
+    return Drawn(network, joined.graph, ends, findings, (*joined.repairs, *reached.repairs))
 
 
 def join_settings(case: Case) -> JoinSettings:

@@ -11,7 +11,7 @@ from __future__ import annotations
 
 import argparse
 import hashlib
-import resource
+import os
 import statistics
 import subprocess
 import sys
@@ -99,9 +99,9 @@ def row(label: str, net: Lines) -> str:
 def peak_memory(case: Path) -> int:
     """Growth of the peak resident size over the imports, in bytes, of one build in its own process."""
     code = (
-        "import resource, sys; from geomprep.case.build import build; import scipy.spatial, scipy.sparse.csgraph, orjson;"
-        "base = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss; build(sys.argv[1]);"
-        "print((resource.getrusage(resource.RUSAGE_SELF).ru_maxrss - base) * 1024)"
+        "import sys; from geomprep.case.build import build; import scipy.spatial, scipy.sparse.csgraph, orjson\n"
+        "peak = lambda: int(open('/proc/self/status').read().split('VmHWM:')[1].split()[0])\n"
+        "base = peak(); build(sys.argv[1]); print((peak() - base) * 1024)"
     )
     done = subprocess.run([sys.executable, "-c", code, str(case)], capture_output=True, text=True, check=True)
     return int(done.stdout)
@@ -120,7 +120,9 @@ def cold() -> None:
         for _ in range(7):
             floor = timed([sys.executable, "-c", read_only, lines])
             ratios.append(timed([sys.executable, "-m", "geomprep", "build", str(case), "--quiet"]) / floor)
-        print(f"cold build of 5,000 points: {statistics.median(ratios):.2f} (from {min(ratios):.2f} to {max(ratios):.2f})")
+        print(
+            f"cold build of 5,000 points: {statistics.median(ratios):.2f} (from {min(ratios):.2f} to {max(ratios):.2f})"
+        )
 
 
 def timed(command: list[str]) -> float:
@@ -144,7 +146,7 @@ def main() -> None:
         for label, make in SHAPES.items():
             net = make(n // 2 if "soup" in label else n)  # a soup holds every inner point twice
             print(row(label, net), flush=True)
-    print(f"\npeak of this process: {resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024:.0f} MB", np.__version__)
+    print(f"\nnumpy {np.__version__}, {os.cpu_count()} cores")
 
 
 if __name__ == "__main__":

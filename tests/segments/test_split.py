@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from geomprep.segments import resample, split
+from geomprep.segments import leave_out_unreached, resample, split
 
 Y_POINTS = [[0, 0, 0], [1, 0, 0], [2, 0, 0], [3, 1, 0], [3, -1, 0]]
 Y_EDGES = [[0, 1], [1, 2], [2, 3], [4, 2]]
@@ -65,3 +65,17 @@ def test_resampling_keeps_ends_and_marks_what_is_new(make_graph) -> None:
     assert fine.basis.tolist() == [0, 1, 0, 1, 1, 1, 1, 1, 0]
     # the median of the three radii is 1, so half a radius is the same spacing
     assert np.array_equal(resample(network, 0.5, in_radii=True).stations.distance, fine.distance)
+
+
+def test_a_part_without_inlet_is_left_out_on_record(make_graph) -> None:
+    points = [[0, 0, 0], [1, 0, 0], [0, 5, 0], [1, 5, 0], [0, 6, 0]]
+    network = split(make_graph(points, [[0, 1], [2, 3], [3, 4], [4, 2]], radius=0.1))
+    inlet = np.flatnonzero(network.nodes.position[:, 1] == 0)[:1]
+    left = leave_out_unreached(network, inlet, np.array(points, dtype=float))
+    assert len(left.network.segments) == 1
+    assert left.network.nodes.position[:, 1].tolist() == [0, 0]
+    (record,) = left.repairs
+    assert record.kind == "unreached part"
+    # a triangle of sides 1, √2, 1
+    assert f"{1e3 * (2 + 2**0.5):.1f} mm" in record.reason
+    assert leave_out_unreached(left.network, np.array([0]), np.array(points, dtype=float)).repairs == ()
