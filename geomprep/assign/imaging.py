@@ -107,7 +107,8 @@ def imaging_transmural(
 def _origins(all_veins: bool, pressures: ImagingPressures, key: str) -> tuple[Origin, ...]:
     """Basis of the transmural pressure at imaging."""
     if all_veins and pressures.venous is None:
-        detail = "segments.integrals.inverse_fourth_power, nodes.height, inlets.mean_flow, outlets.far_pressure, surroundings.pressure"
+        solved = "segments.integrals.inverse_fourth_power, inlets.mean_flow, outlets.far_pressure"
+        detail = f"{solved}, nodes.height, surroundings.pressure"
     else:
         detail = f"{key}, nodes.height, surroundings.pressure"
     return (Origin("stations.imaging_transmural", Basis.DERIVED, detail),)

@@ -73,7 +73,8 @@ def assign_outlets(
         A resistance comes out negative, or the characteristic resistance exceeds the total.
     """
     target = calibration or CalibrationSettings()
-    entries = [_completed(settings[entry], entry, target) for entry in ends.outlet_entries.tolist()]
+    complete = {entry: _completed(settings[entry], entry, target) for entry in np.unique(ends.outlet_entries).tolist()}
+    entries = [complete[entry] for entry in ends.outlet_entries.tolist()]
     far = np.array([_far_pressure(entry) for entry in entries], dtype=np.float64)
     wanted = np.flatnonzero([OUTLET_MODELS[entry.model or ""](entry) for entry in entries]).astype(np.int64)
     found = None

@@ -10,7 +10,7 @@ from geomprep.assign import Ends, resolve_ends
 from geomprep.case.sections import Case
 from geomprep.errors import CaseError, OpenQuestions, Question
 from geomprep.files import FileContents, read_files
-from geomprep.files.meaning import gate, to_centrelines
+from geomprep.files.meaning import to_centrelines
 from geomprep.findings import Finding
 from geomprep.measure import junctions, measure_segments
 from geomprep.model import Centrelines, Network, PointGraph, Repair, concatenate
@@ -76,27 +76,26 @@ def read_inputs(case: Case) -> Inputs:
         Inputs state different frames.
     """
     contents = read_files([case.folder / statement.file for statement in case.inputs])
-    posture = case.case.model_as or case.case.imaged_in
-    _ask_all(case, contents, posture)
     frames = {statement.frame for statement in case.inputs}
     if len(frames) > 1:
         shown = ", ".join(sorted(str(frame) for frame in frames))
         raise CaseError(f"{case.file}: inputs state different frames ({shown}); bring them into one frame first")
-    parts, findings = [], []
-    for number, (content, statement) in enumerate(zip(contents, case.inputs, strict=True)):
-        lines, seen = to_centrelines(content, statement, key=f"input[{number}]", posture=posture, number=number)
-        parts.append(lines)
-        findings += [*content.findings, *seen]
-    return Inputs(tuple(contents), concatenate(parts), tuple(findings))
-
-
-def _ask_all(case: Case, contents: list[FileContents], posture: str | None) -> None:
-    """Raise every open question of every input at once."""
+    posture = case.case.model_as or case.case.imaged_in
+    parts: list[Centrelines] = []
+    findings: list[Finding] = []
     questions: list[Question] = []
     for number, (content, statement) in enumerate(zip(contents, case.inputs, strict=True)):
-        questions += gate(content, statement, key=f"input[{number}]", posture=posture).questions
+        findings += content.findings
+        try:
+            lines, seen = to_centrelines(content, statement, key=f"input[{number}]", posture=posture, number=number)
+        except OpenQuestions as left:
+            questions += left.questions
+        else:
+            parts.append(lines)
+            findings += seen
     if questions:
         raise OpenQuestions(questions)
+    return Inputs(tuple(contents), concatenate(parts), tuple(findings))
 
 
 def draw_network(case: Case, centrelines: Centrelines, progress: Progress) -> Drawn:

@@ -31,8 +31,8 @@ def anchor_ids(kind: str, raw_points: npt.NDArray[Any], anchors: IntArray) -> Te
     Returns
     -------
     (m,) object array of str
-        ``kind-`` and 12 hexadecimal digits of BLAKE2b over the sorted coordinate bytes;
-        equal anchors get ``-2``, ``-3`` … in row order.
+        ``kind-`` and 12 hexadecimal digits of BLAKE2b over the coordinate bytes, points in the
+        order of their coordinates; equal anchors get ``-2``, ``-3`` … in row order.
 
     Examples
     --------
@@ -41,17 +41,29 @@ def anchor_ids(kind: str, raw_points: npt.NDArray[Any], anchors: IntArray) -> Te
     >>> second == first + "-2"
     True
     """
-    raw = raw_points[anchors.ravel()] + 0.0  # −0.0 and 0.0 are the same place
-    width = raw.dtype.itemsize * 3
-    data = raw.astype(raw.dtype.newbyteorder("<")).tobytes()
-    places = range(0, len(data), width)
-    rows = zip(*[iter([data[place : place + width] for place in places])] * anchors.shape[1], strict=True)
-    known = (anchors >= 0).tolist()
-    found: list[str] = []
-    for row, used in zip(rows, known, strict=True):
-        anchor = b"".join(sorted(part for part, use in zip(row, used, strict=True) if use))
-        found.append(f"{kind}-{hashlib.blake2b(anchor, digest_size=_DIGEST_BYTES).hexdigest()}")
+    anchors = _in_raw_order(raw_points, anchors)
+    rows = np.ascontiguousarray(raw_points[anchors] + 0.0)  # −0.0 and 0.0 are the same place
+    data = memoryview(rows.astype(rows.dtype.newbyteorder("<"), copy=False).tobytes())
+    width = rows.dtype.itemsize * 3
+    starts = range(0, len(data), width * anchors.shape[1])
+    ends = (np.arange(len(anchors)) * width * anchors.shape[1] + width * (anchors >= 0).sum(axis=1)).tolist()
+    found = [
+        f"{kind}-{hashlib.blake2b(data[start:end], digest_size=_DIGEST_BYTES).hexdigest()}"
+        for start, end in zip(starts, ends, strict=True)
+    ]
     return texts("id", _told_apart(found))
+
+
+def _in_raw_order(raw_points: npt.NDArray[Any], anchors: IntArray) -> IntArray:
+    """Sort the anchors of each row by their raw coordinates, entries of −1 last."""
+    if anchors.shape[1] < 2:
+        return anchors
+    used, place = np.unique(anchors, return_inverse=True)
+    rank = np.empty(len(used), np.int64)
+    rank[raw_order(raw_points, used)] = np.arange(len(used))
+    rank[used < 0] = len(used)
+    order = np.argsort(rank[place.reshape(anchors.shape)], axis=1, kind="stable")
+    return np.take_along_axis(anchors, order, axis=1)
 
 
 def _told_apart(ids: list[str]) -> list[str]:
