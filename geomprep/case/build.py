@@ -8,13 +8,13 @@ from pathlib import Path
 
 from geomprep import __version__
 from geomprep.case.file import read_case
-from geomprep.case.geometry import Drawn, Inputs, draw_network, read_inputs
+from geomprep.case.geometry import Drawn, draw_network
 from geomprep.case.parameters import Assigned, assign_parameters
 from geomprep.case.results import write_results
 from geomprep.case.sections import Case
 from geomprep.case.summary import summary_lines
 from geomprep.errors import InputError
-from geomprep.export import ExportContext, ImagingState, InputRecord
+from geomprep.export import ExportContext, ImagingState
 from geomprep.findings import Finding, Severity
 from geomprep.flow import steady_state
 from geomprep.literature import row, rows
@@ -91,23 +91,21 @@ def build(
     """
     step = progress or _quiet
     case = read_case(path)
-    step("read", 0.05)
-    inputs = read_inputs(case)
-    drawn = draw_network(case, inputs.centrelines, step)
+    drawn = draw_network(case, step)
     step("assign", 0.7)
     assigned = assign_parameters(case, drawn)
     step("steady state", 0.8)
     state = steady_state(assigned.network)
-    findings = (*inputs.findings, *drawn.findings, *assigned.findings)
+    findings = (*drawn.findings, *assigned.findings)
     if strict:
         _refuse_left_over(findings, drawn.repairs)
     folder = None if dry_run else Path(output) if output is not None else case.folder / "results"
     if folder is not None:
         step("write", 0.85)
-        context = _context(case, inputs, drawn, assigned, findings)
+        context = _context(case, drawn, assigned, findings)
         write_results(folder, assigned.network, state, context, assigned.station_height)
     step("done", 1.0)
-    counts = inputs.centrelines.n_points, inputs.centrelines.n_lines
+    counts = sum(one.points for one in drawn.inputs), sum(one.lines for one in drawn.inputs)
     summary = summary_lines(assigned.network, state, counts, (findings, drawn.repairs), folder)
     return BuildResult(assigned.network, state, findings, drawn.repairs, folder, summary)
 
@@ -129,9 +127,7 @@ def _refuse_left_over(findings: tuple[Finding, ...], repairs: tuple[Repair, ...]
         raise InputError(f"strict: {len(errors)} finding(s) of severity error; the first: {errors[0]}")
 
 
-def _context(
-    case: Case, inputs: Inputs, drawn: Drawn, assigned: Assigned, findings: tuple[Finding, ...]
-) -> ExportContext:
+def _context(case: Case, drawn: Drawn, assigned: Assigned, findings: tuple[Finding, ...]) -> ExportContext:
     """Everything that the network file says beside the network."""
     imaging, field = case.imaging_state, assigned.field
     return ExportContext(
@@ -139,7 +135,7 @@ def _context(
         subject=case.case.subject or "not stated",
         question=case.case.question or "not stated",
         version=__version__,
-        inputs=_input_records(case, inputs),
+        inputs=drawn.inputs,
         imaging_state=ImagingState(
             posture=case.case.imaged_in or "not stated",
             transmural_from=assigned.transmural_from,
@@ -169,23 +165,6 @@ _STEPS = (
     "assign blood, surroundings, walls, lumped values, inlets and outlets",
     "solve the linear steady state",
 )
-
-
-def _input_records(case: Case, inputs: Inputs) -> tuple[InputRecord, ...]:
-    """One record per file, without its folder."""
-    return tuple(
-        InputRecord(
-            name=Path(statement.file).name,
-            sha256=content.sha256,
-            length_unit=statement.length_unit or "",
-            size_array=statement.size_array or "the only array of sizes",
-            size_means=statement.size_means or "",
-            frame=statement.frame or "unknown",
-            points=len(content.points),
-            lines=content.n_lines,
-        )
-        for statement, content in zip(case.inputs, inputs.contents, strict=True)
-    )
 
 
 def _sources(origins: tuple[Origin, ...], findings: tuple[Finding, ...]) -> tuple[dict[str, object], ...]:

@@ -4,32 +4,28 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass, fields
+from pathlib import Path
+from typing import Any
+
+import numpy.typing as npt
 
 from geomprep.anatomy import NamedPoint, name_segments, read_names
 from geomprep.assign import Ends, resolve_ends
 from geomprep.case.sections import Case
 from geomprep.errors import CaseError, OpenQuestions, Question
+from geomprep.export import InputRecord
 from geomprep.files import FileContents, read_files
 from geomprep.files.meaning import to_centrelines
 from geomprep.findings import Finding
 from geomprep.measure import junctions, measure_segments
-from geomprep.model import Centrelines, Network, PointGraph, Repair, concatenate
-from geomprep.repair import JoinSettings, join
+from geomprep.model import Centrelines, Network, Repair, concatenate
+from geomprep.repair import JoinResult, JoinSettings, join
 from geomprep.segments import leave_out_unreached, order_segments, orient, resample, split
 from geomprep.units import length_factor
 
-__all__ = ["Drawn", "Inputs", "draw_network", "read_inputs"]
+__all__ = ["Drawn", "draw_network"]
 
 Progress = Callable[[str, float], None]
-
-
-@dataclass(frozen=True, eq=False)
-class Inputs:
-    """The files of a case, read and given their meaning."""
-
-    contents: tuple[FileContents, ...]
-    centrelines: Centrelines
-    findings: tuple[Finding, ...]
 
 
 @dataclass(frozen=True, eq=False)
@@ -40,31 +36,44 @@ class Drawn:
     ----------
     network : Network
         Oriented, named, ordered, measured; no parameters yet.
-    graph : PointGraph
-        The joined graph that it was cut from.
     ends : Ends
         Which open ends are inlets and outlets.
+    inputs : tuple of InputRecord
+        What was read, in the order of the case.
     findings : tuple of Finding
     repairs : tuple of Repair
     """
 
     network: Network
-    graph: PointGraph
     ends: Ends
+    inputs: tuple[InputRecord, ...]
     findings: tuple[Finding, ...]
     repairs: tuple[Repair, ...]
 
 
-def read_inputs(case: Case) -> Inputs:
-    """Read all files of a case and give their numbers a meaning.
+@dataclass(frozen=True, eq=False)
+class _Cut:
+    """A network fresh from its graph; points and graph are given back to the machine by then."""
+
+    network: Network
+    raw_points: npt.NDArray[Any]
+    inputs: tuple[InputRecord, ...]
+    findings: tuple[Finding, ...]
+    repairs: tuple[Repair, ...]
+
+
+def draw_network(case: Case, progress: Progress) -> Drawn:
+    """Read, join, split, name, orient and measure.
 
     Parameters
     ----------
     case : Case
+    progress : callable
+        Called with the stage and the part done, 0 to 1.
 
     Returns
     -------
-    Inputs
+    Drawn
 
     Raises
     ------
@@ -73,9 +82,43 @@ def read_inputs(case: Case) -> Inputs:
     OpenQuestions
         All that the case leaves open about all its files.
     CaseError
-        Inputs state different frames.
+        Inputs state different frames, or an end cannot be found.
     """
+    cut = _cut(case, progress)
+    named = name_segments(cut.network, _names(case))
+    ends = resolve_ends(named.network, case.inlets, case.outlets, _metres_per_unit(case))
+    reached = leave_out_unreached(named.network, ends.inlet_nodes, cut.raw_points)
+    if reached.repairs:
+        ends = resolve_ends(reached.network, case.inlets, case.outlets, _metres_per_unit(case))
+    progress("orient", 0.6)
+    network = orient(ends.network, ends.inlet_nodes, ends.outlet_nodes)
+    ordered = order_segments(network, ends.inlet_nodes, ends.outlet_nodes)
+    network = junctions(measure_segments(ordered.network))
+    findings = (*cut.findings, *named.findings, *ends.findings, *ordered.findings)
+    return Drawn(network, ends, cut.inputs, findings, (*cut.repairs, *reached.repairs))
+
+
+def _cut(case: Case, progress: Progress) -> _Cut:
+    """Join the lines of all files and cut the graph into segments."""
+    joined, records, seen = _joined(case, progress)
+    progress("split", 0.5)
+    network = _resampled(case, split(joined.graph))
+    return _Cut(network, joined.graph.raw_points, records, (*seen, *joined.findings), joined.repairs)
+
+
+def _joined(case: Case, progress: Progress) -> tuple[JoinResult, tuple[InputRecord, ...], tuple[Finding, ...]]:
+    """Read all files of a case, give their numbers a meaning, join their lines."""
+    progress("read", 0.05)
     contents = read_files([case.folder / statement.file for statement in case.inputs])
+    records = _input_records(case, contents)
+    centrelines, findings = _centrelines(case, contents)
+    del contents
+    progress("join", 0.3)
+    return join(centrelines, join_settings(case)), records, findings
+
+
+def _centrelines(case: Case, contents: list[FileContents]) -> tuple[Centrelines, tuple[Finding, ...]]:
+    """Lines of all files in SI, or every open question about every file at once."""
     frames = {statement.frame for statement in case.inputs}
     if len(frames) > 1:
         shown = ", ".join(sorted(str(frame) for frame in frames))
@@ -95,38 +138,24 @@ def read_inputs(case: Case) -> Inputs:
             findings += seen
     if questions:
         raise OpenQuestions(questions)
-    return Inputs(tuple(contents), concatenate(parts), tuple(findings))
+    return concatenate(parts), tuple(findings)
 
 
-def draw_network(case: Case, centrelines: Centrelines, progress: Progress) -> Drawn:
-    """Join, split, name, orient and measure.
-
-    Parameters
-    ----------
-    case : Case
-    centrelines : Centrelines
-    progress : callable
-        Called with the stage and the part done, 0 to 1.
-
-    Returns
-    -------
-    Drawn
-    """
-    progress("join", 0.3)
-    joined = join(centrelines, join_settings(case))
-    progress("split", 0.5)
-    network = _resampled(case, split(joined.graph))
-    named = name_segments(network, _names(case))
-    ends = resolve_ends(named.network, case.inlets, case.outlets, _metres_per_unit(case))
-    reached = leave_out_unreached(named.network, ends.inlet_nodes, joined.graph.raw_points)
-    if reached.repairs:
-        ends = resolve_ends(reached.network, case.inlets, case.outlets, _metres_per_unit(case))
-    progress("orient", 0.6)
-    network = orient(ends.network, ends.inlet_nodes, ends.outlet_nodes)
-    ordered = order_segments(network, ends.inlet_nodes, ends.outlet_nodes)
-    network = junctions(measure_segments(ordered.network))
-    findings = (*joined.findings, *named.findings, *ends.findings, *ordered.findings)
-    return Drawn(network, joined.graph, ends, findings, (*joined.repairs, *reached.repairs))
+def _input_records(case: Case, contents: list[FileContents]) -> tuple[InputRecord, ...]:
+    """One record per file, without its folder."""
+    return tuple(
+        InputRecord(
+            name=Path(statement.file).name,
+            sha256=content.sha256,
+            length_unit=statement.length_unit or "",
+            size_array=statement.size_array or "the only array of sizes",
+            size_means=statement.size_means or "",
+            frame=statement.frame or "unknown",
+            points=content.n_points,
+            lines=content.n_lines,
+        )
+        for statement, content in zip(case.inputs, contents, strict=True)
+    )
 
 
 def join_settings(case: Case) -> JoinSettings:
