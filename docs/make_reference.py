@@ -46,7 +46,8 @@ def network_file_page() -> str:
     parts = [
         "# The network file\n\nJSON in UTF-8, SI values as plain numbers, units as UCUM codes in the block `units`. "
         "Tables that grow with the network are objects of equally long columns; short lists are lists of objects. "
-        "Row numbers count from 0. Above 200,000 stations the columns of `stations` stand in a companion `.npz` that the block names with its SHA-256. "
+        "Row numbers count from 0. Above 200,000 stations the columns of `stations` stand in a companion `.npz` that "
+        "the block names with its SHA-256. "
         "`tests/reader_example.py` is a receiver in fewer than forty lines.\n"
     ]
     for name, table in field_tables().items():
@@ -80,7 +81,8 @@ def sources_page() -> str:
     """Every literature row."""
     parts = [
         "# Published numbers and relations\n\n`checked` says whether the number was seen in public text of the "
-        "source, written from memory of it, or is common practice. A row from memory must be confirmed before it is quoted.\n\n"
+        "source, written from memory of it, or is common practice. A row from memory must be confirmed before it is "
+        "quoted.\n\n"
         "| key | what | class | source | place | checked | note |\n|---|---|---|---|---|---|---|\n"
     ]
     for row in rows():
