@@ -1,0 +1,86 @@
+"""Open ends of a file by exactly equal coordinates: a first look, before anything is joined."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.sparse import coo_array
+from scipy.sparse.csgraph import connected_components
+
+from geomprep.files import FileContents
+from geomprep.model import FloatArray, IntArray
+
+__all__ = ["OpenEnds", "find_open_ends"]
+
+
+@dataclass(frozen=True, eq=False)
+class OpenEnds:
+    """How the lines of a file hang together where coordinates are exactly equal.
+
+    Attributes
+    ----------
+    points : (e,) int array
+        A point of the file at every place where one line ends and no other goes on.
+    n_parts : int
+        Parts that share no place.
+    n_loops : int
+        Independent loops.
+    smallest_part : int
+        Places in the smallest part.
+    n_zero_steps : int
+        Steps of lines without length.
+    total_length : float
+        Length of all lines in the unit of the file.
+    """
+
+    points: IntArray
+    n_parts: int
+    n_loops: int
+    smallest_part: int
+    n_zero_steps: int
+    total_length: float
+
+
+def find_open_ends(contents: FileContents) -> OpenEnds:
+    """Return open ends, parts and loops of the lines of a file.
+
+    Points of exactly equal coordinates count as one place; steps drawn twice count once.
+
+    Parameters
+    ----------
+    contents : FileContents
+
+    Returns
+    -------
+    OpenEnds
+    """
+    points = np.asarray(contents.points)
+    first, second = _steps(contents)
+    lengths: FloatArray = np.sqrt(((points[second].astype(float) - points[first]) ** 2).sum(axis=1))
+    _, representative, place = np.unique(points + 0.0, axis=0, return_index=True, return_inverse=True)
+    place = place.reshape(-1)
+    pairs = np.sort(np.stack((place[first], place[second]), axis=1), axis=1)
+    pairs = np.unique(pairs[pairs[:, 0] != pairs[:, 1]], axis=0)
+    degree = np.bincount(pairs.ravel(), minlength=len(representative))
+    used = np.unique(place[contents.connectivity])
+    parts, label = connected_components(
+        coo_array((np.ones(len(pairs)), (pairs[:, 0], pairs[:, 1])), shape=(len(degree),) * 2), directed=False
+    )
+    sizes = np.bincount(label[used], minlength=parts)
+    n_parts = int((sizes > 0).sum())
+    return OpenEnds(
+        points=representative[np.flatnonzero(degree == 1)].astype(np.int64),
+        n_parts=n_parts,
+        n_loops=len(pairs) - len(used) + n_parts,
+        smallest_part=int(sizes[sizes > 0].min()),
+        n_zero_steps=int((lengths == 0).sum()),
+        total_length=float(lengths.sum()),
+    )
+
+
+def _steps(contents: FileContents) -> tuple[IntArray, IntArray]:
+    """Both points of every step along the lines."""
+    inside = np.ones(len(contents.connectivity) - 1, dtype=bool)
+    inside[contents.offsets[1:-1] - 1] = False
+    return contents.connectivity[:-1][inside], contents.connectivity[1:][inside]
