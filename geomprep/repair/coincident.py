@@ -13,7 +13,7 @@ from geomprep.model import FloatArray, IntArray
 from geomprep.repair.classes import may_join
 from geomprep.repair.draft import Draft, degree, merged, point_radius
 
-__all__ = ["join_near_ends", "same_place"]
+__all__ = ["group_pairs", "join_near_ends", "near_pairs", "same_place"]
 
 
 def same_place(points: FloatArray) -> tuple[IntArray, IntArray]:
@@ -85,7 +85,7 @@ def join_near_ends(draft: Draft, within: float) -> tuple[Draft, int, tuple[Findi
     pairs = pairs[may_join(draft.vessel_class[end[pairs[:, 0]]], draft.vessel_class[end[pairs[:, 1]]])]
     if len(pairs) == 0:
         return draft, 0, ()
-    group, wide = _groups(draft.points[end], radius, pairs, within)
+    group, wide = group_pairs(draft.points[end], radius, pairs, within)
     label = np.arange(len(draft.points))
     leader = np.full(int(group.max()) + 1, len(label))
     np.minimum.at(leader, group, end)
@@ -106,7 +106,9 @@ def near_pairs(points: FloatArray, radius: FloatArray, within: float) -> IntArra
     return near
 
 
-def _groups(points: FloatArray, radius: FloatArray, pairs: IntArray, within: float) -> tuple[IntArray, list[IntArray]]:
+def group_pairs(
+    points: FloatArray, radius: FloatArray, pairs: IntArray, within: float
+) -> tuple[IntArray, list[IntArray]]:
     """Group of each point from pairs; groups that chains make too wide are cut, and listed."""
     n = len(points)
     matrix = coo_array((np.ones(len(pairs), np.int8), (pairs[:, 0], pairs[:, 1])), shape=(n, n))

@@ -73,7 +73,7 @@ def without_edges(draft: Draft, dropped: npt.NDArray[np.bool_]) -> Draft:
     return replace(draft, edges=draft.edges[kept], end_radius=draft.end_radius[kept], edge_class=draft.edge_class[kept])
 
 
-def merged(draft: Draft, label: IntArray, moved: bool = True) -> Draft:
+def merged(draft: Draft, label: IntArray, keeps_place: npt.NDArray[np.bool_] | None = None) -> Draft:
     """Merge points of one label; a merged point lies at the mean of its members.
 
     Parameters
@@ -81,8 +81,8 @@ def merged(draft: Draft, label: IntArray, moved: bool = True) -> Draft:
     draft : Draft
     label : (n,) int array
         New number of each point, 0 … k − 1, none left out.
-    moved : bool
-        False leaves each merged point where its member with the smallest number lies.
+    keeps_place : (n,) bool array, optional
+        Members whose mean is taken, at least one of each label; all of them by default.
     """
     count = int(label.max(initial=-1)) + 1
     members = np.bincount(label, minlength=count)
@@ -100,24 +100,38 @@ def merged(draft: Draft, label: IntArray, moved: bool = True) -> Draft:
     )
     several = np.flatnonzero(members[label] > 1)
     if len(several):
-        _settle(draft, new, several, label, moved)
+        _settle(draft, new, several, label)
+        _place(draft, new, several if keeps_place is None else several[keeps_place[several]], label)
     return new
 
 
-def _settle(draft: Draft, new: Draft, several: IntArray, label: IntArray, moved: bool) -> None:
-    """Give merged points the place, class and source of all their members (in place, on fresh arrays)."""
-    ordered = several[_source_order(draft, several)]
+def _grouped(draft: Draft, members: IntArray, label: IntArray) -> tuple[IntArray, IntArray]:
+    """Members label by label, each label in the order of raw coordinates, and where each label starts."""
+    ordered = members[_source_order(draft, members)]
     ordered = ordered[np.argsort(label[ordered], kind="stable")]
-    starts = np.flatnonzero(np.diff(label[ordered], prepend=-1))
+    return ordered, np.flatnonzero(np.diff(label[ordered], prepend=-1))
+
+
+def _place(draft: Draft, new: Draft, members: IntArray, label: IntArray) -> None:
+    """Put merged points at the mean of members (in place, on fresh arrays)."""
+    ordered, starts = _grouped(draft, members, label)
+    count = np.diff(np.append(starts, len(ordered)))
+    several = np.flatnonzero(count > 1)
+    new.points[label[ordered[starts]]] = draft.points[ordered[starts]]
+    if len(several):
+        mean = np.add.reduceat(draft.points[ordered], starts) / count[:, None]
+        new.points[label[ordered[starts[several]]]] = mean[several]
+
+
+def _settle(draft: Draft, new: Draft, several: IntArray, label: IntArray) -> None:
+    """Give merged points the class and source of all their members (in place, on fresh arrays)."""
+    ordered, starts = _grouped(draft, several, label)
     target = label[ordered[starts]]
     leader = ordered[starts]  # the member whose raw coordinates come first
     new.source_point[target] = draft.source_point[leader]
     new.input_id[target] = draft.input_id[leader]
     new.vessel_class[target] = np.maximum.reduceat(draft.vessel_class[ordered], starts)
     new.radius_basis[target] = np.maximum.reduceat(draft.radius_basis[ordered], starts)
-    if moved:
-        count = np.diff(np.append(starts, len(ordered)))
-        new.points[target] = np.add.reduceat(draft.points[ordered], starts) / count[:, None]
 
 
 def _source_order(draft: Draft, which: IntArray) -> IntArray:

@@ -12,10 +12,15 @@ from geomprep.model import Basis, Centrelines, PointGraph, Repair, anchor_ids
 from geomprep.repair.accept import refuse_unusable
 from geomprep.repair.classes import class_findings
 from geomprep.repair.coincident import join_near_ends
+from geomprep.repair.copies import fuse_copies
 from geomprep.repair.doubled import single_edges
 from geomprep.repair.draft import Draft, compacted
+from geomprep.repair.ends import join_near_open_ends
+from geomprep.repair.joints import join_sides
+from geomprep.repair.overlaps import Layout
 from geomprep.repair.parts import isolated_parts
 from geomprep.repair.radii import settled_radii
+from geomprep.repair.runs import laid_in_runs
 from geomprep.repair.settings import JoinSettings
 from geomprep.repair.start import started
 
@@ -75,21 +80,52 @@ def join(centrelines: Centrelines, settings: JoinSettings | None = None) -> Join
     settings = settings or JoinSettings()
     refuse_unusable(centrelines)
     draft, findings = started(centrelines)
-    draft, single = single_edges(draft, settings.radii_agree_within)
-    findings += single
-    draft, joined, wide = join_near_ends(draft, settings.tolerance)
-    findings += wide
-    if joined:
-        draft, single = single_edges(draft, settings.radii_agree_within)
-        findings += (_joined_finding(joined, settings.tolerance), *single)
+    draft, found = _coincident(draft, settings)
+    findings += found
     if len(draft.edges) == 0:
         raise InputError("every line lies within one point; a network needs at least one line with a length")
     draft, repairs = _without_lost_points(draft)
+    draft, more, found = _nearby(draft, settings)
+    repairs, findings = repairs + more, findings + found
     graph, radius_findings = _finished(draft)
     findings += radius_findings
     findings += class_findings(centrelines.vessel_class, draft.edge_class, draft.edges, draft.points)
     findings += isolated_parts(draft, graph.radius)
     return JoinResult(graph, repairs, findings)
+
+
+def _coincident(draft: Draft, settings: JoinSettings) -> tuple[Draft, tuple[Finding, ...]]:
+    """One point per place, one edge per pair of points."""
+    draft, findings = single_edges(draft, settings.radii_agree_within)
+    draft, joined, wide = join_near_ends(draft, settings.tolerance)
+    findings += wide
+    if joined:
+        draft, single = single_edges(draft, settings.radii_agree_within)
+        findings += (_joined_finding(joined, settings.tolerance), *single)
+    return draft, findings
+
+
+def _nearby(draft: Draft, settings: JoinSettings) -> tuple[Draft, tuple[Repair, ...], tuple[Finding, ...]]:
+    """Fuse copies of trunks, then join open ends to ends and to sides within a part of the radius."""
+    draft = laid_in_runs(draft)
+    layout = Layout.of(draft)
+    fused, repairs, findings = fuse_copies(draft, layout, settings)
+    draft, layout = _laid_again(draft, fused, layout, settings)
+    joined, ends = join_near_open_ends(draft, layout.runs, settings.joints_within)
+    draft, layout = _laid_again(draft, joined, layout, settings)
+    joined, sides = join_sides(draft, layout, settings)
+    if joined is not draft:
+        joined, _ = compacted(single_edges(joined, settings.radii_agree_within)[0])
+    return joined, repairs + ends + sides, findings
+
+
+def _laid_again(before: Draft, after: Draft, layout: Layout, settings: JoinSettings) -> tuple[Draft, Layout]:
+    """Runs and marks anew where a step has changed the draft."""
+    if after is before:
+        return before, layout
+    single, _ = single_edges(after, settings.radii_agree_within)
+    laid = laid_in_runs(compacted(single)[0])
+    return laid, Layout.of(laid)
 
 
 def _joined_finding(joined: int, tolerance: float) -> Finding:

@@ -1,0 +1,283 @@
+"""Copies of a trunk, each sampled in its own way: fused into one run."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from geomprep.curves import piece_integrals
+from geomprep.findings import Finding, Severity
+from geomprep.model import FloatArray, IntArray, Repair, anchor_ids, raw_order
+from geomprep.repair.classes import VEIN, may_join
+from geomprep.repair.draft import Draft
+from geomprep.repair.fused import Absorbed, Fusing, averaged, fused_draft
+from geomprep.repair.overlaps import Layout, overlapping_runs
+from geomprep.repair.runs import Runs, between, nearest_part, places_on
+from geomprep.repair.settings import JoinSettings
+from geomprep.repair.stretches import Beside, Forest, Limits, Samples, Stretch, copied_stretches
+
+__all__ = ["fuse_copies"]
+
+_STEP = 0.25
+"""Largest distance between samples, in radii."""
+_CANDIDATES = 3
+"""Nearest samples whose edges are looked at."""
+_PAIR = 2.0
+"""Two lines within x of a common middle line are within 2 x of one another."""
+_WEAK = 3.0
+"""Single samples may lie this many times further apart than the average."""
+
+
+def fuse_copies(
+    draft: Draft, layout: Layout, settings: JoinSettings
+) -> tuple[Draft, tuple[Repair, ...], tuple[Finding, ...]]:
+    """Fuse runs that are copies of one vessel.
+
+    The longest of the runs that lie along one another is kept; a stretch of a
+    shorter one that follows it is absorbed, and what is left of it joins where the two
+    part. Kept points then move to the mean of all copies, in position and in ln r.
+    Veins are fused within the tolerance only: split sinuses and doubled veins are real.
+
+    Parameters
+    ----------
+    draft : Draft
+        Edges laid in runs.
+    layout : Layout
+    settings : JoinSettings
+
+    Returns
+    -------
+    Draft
+        The same object where nothing was fused.
+    repairs : tuple of Repair
+        One per absorbed stretch.
+    findings : tuple of Finding
+        Veins left side by side.
+    """
+    apart = _PAIR * settings.copies_within
+    if apart <= 0:
+        return draft, (), ()
+    pairs = overlapping_runs(draft, layout, _WEAK * apart, settings.copies_radius_ratio)
+    if len(pairs) == 0:
+        return draft, (), ()
+    which, pair = np.unique(pairs, return_inverse=True)
+    pair = pair.reshape(pairs.shape)
+    samples, rows = _sampled(draft, layout.runs, which)
+    order = _longest_first(draft, layout.runs, which)
+    state, findings = _absorbed_in_turn(draft, (samples, rows), pair, order, settings)
+    if not state.absorbed:
+        return draft, (), findings
+    points, end_radius = averaged(state, 1.5 * apart)
+    new = fused_draft(state, points, end_radius)
+    return new, _records(state, points, end_radius), (*findings, _summary(state))
+
+
+def _sampled(draft: Draft, laid: Runs, which: IntArray) -> tuple[Samples, IntArray]:
+    """Sample some runs; also give the first row of each, and the number of rows."""
+    counts = laid.offsets[which + 1] - laid.offsets[which]
+    ends = np.cumsum(counts)
+    edge = np.arange(ends[-1]) + np.repeat(laid.offsets[which] - (ends - counts), counts)
+    step = laid.along[edge + 1] - laid.along[edge]
+    pieces = np.maximum(np.ceil(step / _STEP), 1.0).astype(np.int64)
+    per_run = np.add.reduceat(pieces, ends - counts)
+    number = np.arange(pieces.sum()) - np.repeat(np.cumsum(pieces) - pieces, pieces)
+    part = np.insert(number / np.repeat(pieces, pieces), np.cumsum(per_run), 1.0)
+    edge = np.insert(np.repeat(edge, pieces), np.cumsum(per_run), laid.offsets[which + 1] - 1)
+    along = laid.along[edge] + part * (laid.along[edge + 1] - laid.along[edge])
+    run = np.repeat(which, per_run + 1)
+    chord = places_on(draft, *laid.places(run, along + 1.0)) - places_on(draft, *laid.places(run, along - 1.0))
+    chord /= np.maximum(np.linalg.norm(chord, axis=1), np.finfo(float).tiny)[:, None]
+    place, radius = places_on(draft, edge, part), between(draft.end_radius, edge, part)
+    return Samples(edge, part, place, chord, radius, along), np.concatenate(([0], np.cumsum(per_run + 1)))
+
+
+def _longest_first(draft: Draft, laid: Runs, which: IntArray) -> list[int]:
+    """Order of runs by length, then by the raw coordinates of their points."""
+    nodes = np.concatenate([draft.edges[laid.offsets[run] : laid.offsets[run + 1]].ravel() for run in which])
+    counts = 2 * (laid.offsets[which + 1] - laid.offsets[which])
+    source = draft.source_point[nodes]
+    rank = np.empty(len(nodes), np.int64)
+    rank[raw_order(draft.raw_points, np.maximum(source, 0))] = np.arange(len(nodes))
+    first = np.minimum.reduceat(rank, np.cumsum(counts) - counts)
+    length = laid.along[laid.offsets[which + 1]] - laid.along[laid.offsets[which]]
+    order: list[int] = np.lexsort((first, -length)).tolist()
+    return order
+
+
+def _absorbed_in_turn(
+    draft: Draft, sampled: tuple[Samples, IntArray], pair: IntArray, order: list[int], settings: JoinSettings
+) -> tuple[Fusing, tuple[Finding, ...]]:
+    """Take runs into the kept network one by one, without what is a copy of it."""
+    samples, rows = sampled
+    partners: dict[int, list[int]] = {number: [] for number in order}
+    for one, other in pair.tolist():
+        partners[one].append(other)
+        partners[other].append(one)
+    state, forest = Fusing(draft, 4 * len(order) + 8), Forest()
+    kept: set[int] = set()
+    findings: list[Finding] = []
+    for number in order:
+        start, end = int(rows[number]), int(rows[number + 1])
+        run = samples[start:end]
+        stays = np.ones(end - start, np.bool_)
+        if not kept.isdisjoint(partners[number]):
+            beside = _beside(state, forest, samples, run)
+            stretches, aside = _decided(draft, run, beside, state, settings)
+            findings += aside
+            after = -1
+            for stretch in stretches:
+                gone = state.absorb(run, beside, stretch, after)
+                if gone is not None:
+                    after = gone[1] + 1
+                    stays[stretch.first : stretch.last + 1] = False
+        stays &= ~state.gone[run.edge]
+        state.keep(np.unique(run.edge[~state.gone[run.edge]]))
+        forest.add(start + np.flatnonzero(stays), samples.point)
+        kept.add(number)
+    return state, tuple(findings)
+
+
+def _beside(state: Fusing, forest: Forest, samples: Samples, run: Samples) -> Beside:
+    """Nearest place on kept edges for each sample of a run."""
+    draft = state.draft
+    row = forest.nearest(run.point, _CANDIDATES)
+    edge = samples.edge[row]
+    before = np.maximum(edge - 1, 0)
+    follows = state.edges[before, 1] == state.edges[edge, 0]
+    edge = np.concatenate((edge, np.where(follows, before, edge)), axis=1)
+    row = np.concatenate((row, row), axis=1)
+    start = state.points[state.edges[edge, 0]]
+    part, distance = nearest_part(run.point[:, None], start, state.points[state.edges[edge, 1]] - start)
+    allowed = (row >= 0) & ~state.gone[edge] & may_join(draft.edge_class[edge], draft.edge_class[run.edge][:, None])
+    distance = np.where(allowed, distance, np.inf)
+    best = np.argmin(distance, axis=1)[:, None]
+    edge, row = np.take_along_axis(edge, best, 1)[:, 0], np.take_along_axis(row, best, 1)[:, 0]
+    part, distance = np.take_along_axis(part, best, 1)[:, 0], np.take_along_axis(distance, best, 1)[:, 0]
+    radius = between(state.end_radius, edge, part)
+    return Beside(
+        edge,
+        part,
+        distance / np.minimum(radius, run.radius),
+        np.abs(np.einsum("ij,ij->i", run.tangent, samples.tangent[row])),
+        np.maximum(radius, run.radius) / np.minimum(radius, run.radius),
+    )
+
+
+def _decided(
+    draft: Draft, run: Samples, beside: Beside, state: Fusing, settings: JoinSettings
+) -> tuple[list[Stretch], list[Finding]]:
+    """Stretches to absorb, and veins that stay side by side."""
+    ends = draft.edges[run.edge[0], 0], draft.edges[run.edge[-1], 1]
+    open_ends = bool(state.degree[ends[0]] == 1), bool(state.degree[ends[1]] == 1)
+    apart = _PAIR * settings.copies_within
+    close = Limits(apart, settings.copies_overlap, settings.copies_radius_ratio)
+    stretches = copied_stretches(run, beside, close, open_ends)
+    if not stretches or not _in_veins(draft, run, beside, stretches):
+        return stretches, []
+    exact = Limits(settings.tolerance, settings.copies_overlap, settings.copies_radius_ratio)
+    same = copied_stretches(run, beside, exact, open_ends) if settings.tolerance > 0 else []
+    covered = np.zeros(len(run.edge), np.bool_)
+    for stretch in same:
+        covered[stretch.first : stretch.last + 1] = True
+    return same, [
+        _veins_finding(run, stretch) for stretch in stretches if not covered[(stretch.first + stretch.last) // 2]
+    ]
+
+
+def _in_veins(draft: Draft, run: Samples, beside: Beside, stretches: list[Stretch]) -> bool:
+    """Whether a vein takes part in any of the stretches."""
+    rows = np.concatenate([np.arange(stretch.first, stretch.last + 1) for stretch in stretches])
+    classes = draft.edge_class[np.concatenate((run.edge[rows], beside.edge[rows]))]
+    return bool((classes == VEIN).any())
+
+
+def _veins_finding(run: Samples, stretch: Stretch) -> Finding:
+    """Two veins that lie in one another and are left so."""
+    x, y, z = run.point[(stretch.first + stretch.last) // 2].tolist()
+    return Finding(
+        "overlapping veins",
+        Severity.WARNING,
+        f"two veins lie within one another for {run.along[stretch.last] - run.along[stretch.first]:.3g} radii, "
+        f"{stretch.mean_distance:.2g} of the radius apart on average; left as drawn, since doubled veins are real: "
+        "both carry flow in the model",
+        position=(x, y, z),
+        value=stretch.mean_distance,
+    )
+
+
+def _records(state: Fusing, points: FloatArray, end_radius: FloatArray) -> tuple[Repair, ...]:
+    """One repair per absorbed stretch."""
+    draft = state.draft
+    anchors = np.full((len(state.absorbed), 3), -1, np.int64)
+    of_node = np.full(len(draft.points), -1, np.int64)
+    for number, taken in enumerate(state.absorbed):
+        source = draft.source_point[taken.nodes if len(taken.nodes) else draft.edges[taken.samples.edge[:1]].ravel()]
+        anchors[number] = source[[0, len(source) // 2, -1]]
+        of_node[taken.nodes] = number
+    ids = anchor_ids("fused-copies", draft.raw_points, anchors)
+    merged_into = draft.merged_into
+    raw = np.flatnonzero((merged_into >= 0) & (of_node[np.maximum(merged_into, 0)] >= 0))
+    of_raw = of_node[merged_into[raw]]
+    raw = raw[np.argsort(of_raw, kind="stable")]
+    bounds = np.cumsum(np.bincount(of_raw, minlength=len(ids)))[:-1]
+    return tuple(
+        _record(state, taken, str(name), tuple(group.tolist()), (points, end_radius))
+        for taken, name, group in zip(state.absorbed, ids, np.split(raw, bounds), strict=True)
+    )
+
+
+def _record(
+    state: Fusing, taken: Absorbed, name: str, raw: tuple[int, ...], after: tuple[FloatArray, FloatArray]
+) -> Repair:
+    """Repair of one absorbed stretch, with the conductance of both copies before and of the one after."""
+    own = _resistance(taken.samples.point, taken.samples.radius)
+    beside = _resistance(*_on_edges(state.edges, state.points, state.end_radius, taken))
+    fused = _resistance(*_on_edges(state.edges, *after, taken))
+    length = float(np.linalg.norm(np.diff(taken.samples.point, axis=0), axis=1).sum())
+    x, y, z = taken.samples.point[len(taken.samples.edge) // 2].tolist()
+    return Repair(
+        id=name,
+        kind="fused copies",
+        reason=(
+            f"a line runs along another for {1e3 * length:.3g} mm "
+            f"({taken.samples.along[-1] - taken.samples.along[0]:.3g} radii), "
+            f"{taken.stretch.mean_distance:.2g} of the radius apart on average, "
+            f"{taken.stretch.largest_distance:.2g} at most"
+        ),
+        position=(x, y, z),
+        choice="fuse",
+        options=("fuse", "leave"),
+        conductance_before=np.pi / 8.0 * (1.0 / own + 1.0 / beside),
+        conductance_after=np.pi / 8.0 / fused,
+        raw_points=raw,
+    )
+
+
+def _on_edges(
+    edges: IntArray, points: FloatArray, end_radius: FloatArray, taken: Absorbed
+) -> tuple[FloatArray, FloatArray]:
+    """Positions and radii on the kept edges beside the samples of a stretch."""
+    start, end = points[edges[taken.edge, 0]], points[edges[taken.edge, 1]]
+    return start + taken.part[:, None] * (end - start), between(end_radius, taken.edge, taken.part)
+
+
+def _resistance(points: FloatArray, radius: FloatArray) -> float:
+    """Integral of ds / r⁴ along a line."""
+    step = np.linalg.norm(np.diff(points, axis=0), axis=1)
+    return float(piece_integrals(step, radius[:-1], radius[1:])[:, 3].sum())
+
+
+def _summary(state: Fusing) -> Finding:
+    """Say how many stretches were fused."""
+    draft = state.draft
+    mixed = sum(
+        bool(draft.edge_class[taken.samples.edge[0]] != draft.edge_class[taken.edge[0]]) for taken in state.absorbed
+    )
+    x, y, z = state.absorbed[0].samples.point[0].tolist()
+    return Finding(
+        "fused copies",
+        Severity.NOTE,
+        f"{len(state.absorbed)} stretches of lines are copies of others and were fused with them"
+        + (f"; {mixed} of them between a line without class and one with" if mixed else ""),
+        position=(x, y, z),
+        value=float(len(state.absorbed)),
+    )

@@ -1,0 +1,124 @@
+"""Open ends a small part of the radius away from other ends or junctions."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from geomprep.curves import piece_integrals
+from geomprep.model import BoolArray, FloatArray, IntArray, Repair, anchor_ids
+from geomprep.repair.classes import may_join
+from geomprep.repair.coincident import group_pairs, near_pairs
+from geomprep.repair.draft import Draft, degree, lengths, merged, point_radius
+from geomprep.repair.runs import Runs
+
+__all__ = ["join_near_open_ends", "run_conductance", "runs_at_ends"]
+
+_INSIDE = 2.0
+"""A run shorter than this many radii is not closed to a ring."""
+
+
+def join_near_open_ends(draft: Draft, laid: Runs, within: float) -> tuple[Draft, tuple[Repair, ...]]:
+    """Merge open ends with ends and junctions that lie within a part of the radius.
+
+    Parameters
+    ----------
+    draft : Draft
+    laid : Runs
+    within : float
+        Largest distance as a part of the smaller radius.
+
+    Returns
+    -------
+    Draft
+        The same object where nothing was near.
+    repairs : tuple of Repair
+        One per group of points that became one.
+    """
+    ends = degree(draft)
+    node = np.flatnonzero((ends != 2) & (ends > 0))
+    radius = point_radius(draft)
+    pairs = near_pairs(draft.points[node], radius[node], within)
+    one, other = node[pairs[:, 0]], node[pairs[:, 1]]
+    allowed = may_join(draft.vessel_class[one], draft.vessel_class[other])
+    allowed &= ((ends[one] == 1) | (ends[other] == 1)) & ~_short_run_between(draft, laid, one, other)
+    if not allowed.any():
+        return draft, ()
+    group, _ = group_pairs(draft.points[node], radius[node], pairs[allowed], within)
+    leader = np.full(int(group.max()) + 1, len(draft.points))
+    np.minimum.at(leader, group, node)
+    label = np.arange(len(draft.points))
+    label[node] = leader[group]
+    joined = np.flatnonzero(np.bincount(label, minlength=len(label))[label] > 1)
+    joined = joined[np.argsort(label[joined], kind="stable")]
+    groups = np.split(joined, np.flatnonzero(np.diff(label[joined])) + 1)
+    repairs = _records(draft, groups, radius, _branch_conductance(draft, laid))
+    junctions = np.bincount(label[ends > 2], minlength=len(label))
+    keeps = (ends > 2) | (junctions[label] == 0)  # a junction stays in its place
+    _, label = np.unique(label, return_inverse=True)
+    return merged(draft, label, keeps), repairs
+
+
+def _short_run_between(draft: Draft, laid: Runs, one: IntArray, other: IntArray) -> BoolArray:
+    """Whether two points are the ends of one run of less than two radii."""
+    first, last = draft.edges[laid.offsets[:-1], 0], draft.edges[laid.offsets[1:] - 1, 1]
+    short = laid.along[laid.offsets[1:]] - laid.along[laid.offsets[:-1]] < _INSIDE
+    n = np.int64(len(draft.points))
+    keys = np.minimum(first, last)[short] * n + np.maximum(first, last)[short]
+    found: BoolArray = np.isin(np.minimum(one, other) * n + np.maximum(one, other), keys)
+    return found
+
+
+def run_conductance(draft: Draft, laid: Runs) -> FloatArray:
+    """Conductance of each run at unit viscosity, π / (8 ∫ds/r⁴)."""
+    resistance = piece_integrals(lengths(draft), draft.end_radius[:, 0], draft.end_radius[:, 1])[:, 3]
+    conductance: FloatArray = np.pi / 8.0 / np.add.reduceat(resistance, laid.offsets[:-1])
+    return conductance
+
+
+def runs_at_ends(draft: Draft, laid: Runs) -> tuple[IntArray, FloatArray]:
+    """Run that begins or ends at each point, −1 for none, and the distance along all runs there."""
+    run = np.full(len(draft.points), -1, np.int64)
+    along = np.zeros(len(draft.points))
+    numbers = np.arange(len(laid.offsets) - 1)
+    first, last = draft.edges[laid.offsets[:-1], 0], draft.edges[laid.offsets[1:] - 1, 1]
+    run[last], along[last] = numbers, laid.along[laid.offsets[1:]]
+    run[first], along[first] = numbers, laid.along[laid.offsets[:-1]]
+    return run, along
+
+
+def _branch_conductance(draft: Draft, laid: Runs) -> FloatArray:
+    """Conductance of the run at each open end; infinite elsewhere."""
+    run, _ = runs_at_ends(draft, laid)
+    value = np.full(len(run), np.inf)
+    tips = np.flatnonzero(degree(draft) == 1)
+    value[tips] = run_conductance(draft, laid)[run[tips]]
+    return value
+
+
+def _records(draft: Draft, groups: list[IntArray], radius: FloatArray, conductance: FloatArray) -> tuple[Repair, ...]:
+    """One repair per group of joined points."""
+    anchors = np.full((len(groups), max(len(group) for group in groups)), -1, np.int64)
+    for row, group in zip(anchors, groups, strict=True):
+        row[: len(group)] = draft.source_point[group]
+    records = []
+    for name, group in zip(anchor_ids("joined-ends", draft.raw_points, anchors).tolist(), groups, strict=True):
+        place = draft.points[group]
+        apart = float(np.linalg.norm(place[:, None] - place[None], axis=2).max())
+        x, y, z = place.mean(axis=0).tolist()
+        records.append(
+            Repair(
+                id=name,
+                kind="joined ends",
+                reason=(
+                    f"{len(group)} ends lie up to {1e3 * apart:.3g} mm apart, "
+                    f"{apart / radius[group].min():.2g} of the smaller radius"
+                ),
+                position=(x, y, z),
+                choice="join",
+                options=("join", "leave"),
+                conductance_before=0.0,
+                conductance_after=float(conductance[group].min()),
+                raw_points=tuple(point for point in draft.source_point[group].tolist() if point >= 0),
+            )
+        )
+    return tuple(records)
