@@ -91,7 +91,10 @@ def _sampled(draft: Draft, laid: Runs, which: IntArray) -> tuple[Samples, IntArr
 
 
 def _longest_first(draft: Draft, laid: Runs, which: IntArray) -> list[int]:
-    """Order of runs by length, then by the raw coordinates of their points."""
+    """Order of runs by length, then by the raw coordinates of their points; single steps come last.
+
+    A single step that shares both its points with a finer line would otherwise replace its bends.
+    """
     nodes = np.concatenate([draft.edges[laid.offsets[run] : laid.offsets[run + 1]].ravel() for run in which])
     counts = 2 * (laid.offsets[which + 1] - laid.offsets[which])
     source = draft.source_point[nodes]
@@ -99,7 +102,7 @@ def _longest_first(draft: Draft, laid: Runs, which: IntArray) -> list[int]:
     rank[raw_order(draft.raw_points, np.maximum(source, 0))] = np.arange(len(nodes))
     first = np.minimum.reduceat(rank, np.cumsum(counts) - counts)
     length = laid.along[laid.offsets[which + 1]] - laid.along[laid.offsets[which]]
-    order: list[int] = np.lexsort((first, -length)).tolist()
+    order: list[int] = np.lexsort((first, -length, counts == 2)).tolist()
     return order
 
 

@@ -138,7 +138,9 @@ class Fusing:
         """Let what is left of a run begin on the kept network; the absorbed point next to it goes there too."""
         node = self.node_at(int(beside.edge[row]), float(beside.part[row]), float(run.radius[row]))
         self.edges[boundary] = node
-        self.end_radius[boundary] = run.radius[row]
+        # what lies between the other vessel's last sample and the first of its own is no taper
+        edge, end = boundary
+        self.end_radius[boundary] = self.end_radius[edge, 1 - end]
         for point in last.tolist():
             self.goes_to[point] = node
 

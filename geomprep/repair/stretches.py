@@ -18,6 +18,8 @@ _WEAK = 3.0
 """A stretch goes on while single samples stay within this many limits."""
 _CLOSE_PART = 0.4
 """Part of a stretch that must be close on average; lines that only cross stay below one third."""
+_GAP, _INSIDE = 6.0, 0.75
+"""Longest way between two stretches, and how far it may stray, in radii, to be a copy too."""
 _PARTED = 0.9
 """Distance in radii up to which parting runs are taken to part at a steady angle."""
 
@@ -172,11 +174,11 @@ def copied_stretches(run: Samples, beside: Beside, limits: Limits, open_ends: tu
 
 
 def _bridged(stretches: list[tuple[int, int]], along: FloatArray, distance: FloatArray) -> list[tuple[int, int]]:
-    """Join stretches that are parted by less than two radii inside the other vessel."""
+    """Join stretches where the line stays well inside the other vessel between them."""
     joined: list[tuple[int, int]] = []
     for first, last in stretches:
         before = joined[-1] if joined else None
-        if before and along[first] - along[before[1]] <= 2.0 and distance[before[1] : first].max() <= 1.0:
+        if before and along[first] - along[before[1]] <= _GAP and distance[before[1] : first].max() <= _INSIDE:
             joined[-1] = (before[0], last)
         else:
             joined.append((first, last))
