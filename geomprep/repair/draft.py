@@ -8,7 +8,7 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 
-from geomprep.model import FloatArray, IntArray, Uint8Array, degrees
+from geomprep.model import BoolArray, FloatArray, IntArray, Uint8Array, degrees
 
 __all__ = ["Draft", "compacted", "degree", "lengths", "merged", "point_radius", "without_edges"]
 
@@ -29,6 +29,8 @@ class Draft:
         Radius that the line stated at both ends of each edge.
     edge_class : (e,) uint8 array
         Vessel class of the line.
+    was_end : (n,) bool array
+        Points made of open ends; they may still lie on the side of another line.
     merged_into : (n_raw,) int array
         Point that each raw point ended in, :data:`PointGraph.UNUSED` where no line uses it.
     raw_points : (n_raw, 3) array
@@ -42,6 +44,7 @@ class Draft:
     edges: IntArray
     end_radius: FloatArray
     edge_class: Uint8Array
+    was_end: BoolArray
     merged_into: IntArray
     raw_points: npt.NDArray[Any]
 
@@ -95,6 +98,7 @@ def merged(draft: Draft, label: IntArray, keeps_place: npt.NDArray[np.bool_] | N
         input_id=draft.input_id[first],
         radius_basis=draft.radius_basis[first],
         source_point=draft.source_point[first],
+        was_end=draft.was_end[first],
         edges=label[draft.edges],
         merged_into=_relabelled(draft.merged_into, label),
     )
@@ -131,6 +135,7 @@ def _settle(draft: Draft, new: Draft, several: IntArray, label: IntArray) -> Non
     new.source_point[target] = draft.source_point[leader]
     new.input_id[target] = draft.input_id[leader]
     new.vessel_class[target] = np.maximum.reduceat(draft.vessel_class[ordered], starts)
+    new.was_end[target] = np.logical_or.reduceat(draft.was_end[ordered], starts)
     new.radius_basis[target] = np.maximum.reduceat(draft.radius_basis[ordered], starts)
 
 
@@ -177,6 +182,7 @@ def compacted(draft: Draft) -> tuple[Draft, IntArray]:
             input_id=draft.input_id[order],
             radius_basis=draft.radius_basis[order],
             source_point=draft.source_point[order],
+            was_end=draft.was_end[order],
             edges=number[draft.edges],
             merged_into=followed,
         ),

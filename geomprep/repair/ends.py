@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
 from geomprep.curves import piece_integrals
@@ -55,7 +57,9 @@ def join_near_open_ends(draft: Draft, laid: Runs, within: float) -> tuple[Draft,
     junctions = np.bincount(label[ends > 2], minlength=len(label))
     keeps = (ends > 2) | (junctions[label] == 0)  # a junction stays in its place
     _, label = np.unique(label, return_inverse=True)
-    return merged(draft, label, keeps), repairs
+    was_end = draft.was_end.copy()
+    was_end[joined] = True
+    return merged(replace(draft, was_end=was_end), label, keeps), repairs
 
 
 def _short_run_between(draft: Draft, laid: Runs, one: IntArray, other: IntArray) -> BoolArray:
@@ -76,9 +80,15 @@ def run_conductance(draft: Draft, laid: Runs) -> FloatArray:
 
 
 def runs_at_ends(draft: Draft, laid: Runs) -> tuple[IntArray, FloatArray]:
-    """Run that begins or ends at each point, −1 for none, and the distance along all runs there."""
+    """Run that begins or ends at each point, or passes where ends were joined; and the distance along all runs there.
+
+    The run is −1 at other points.
+    """
     run = np.full(len(draft.points), -1, np.int64)
     along = np.zeros(len(draft.points))
+    if draft.was_end.any():
+        edge = np.flatnonzero(draft.was_end[draft.edges[:, 0]])
+        run[draft.edges[edge, 0]], along[draft.edges[edge, 0]] = laid.of_edge[edge], laid.along[edge]
     numbers = np.arange(len(laid.offsets) - 1)
     first, last = draft.edges[laid.offsets[:-1], 0], draft.edges[laid.offsets[1:] - 1, 1]
     run[last], along[last] = numbers, laid.along[laid.offsets[1:]]

@@ -121,15 +121,12 @@ def _contacts(draft: Draft, layout: Layout, settings: JoinSettings) -> _Contacts
     """Ends within reach of the side of a line, each with the nearest place."""
     marks, laid = layout.marks, layout.runs
     ends = degree(draft)
-    node = np.flatnonzero((ends != 2) & (ends > 0))
-    within = np.where(ends[node] == 1, settings.joints_within, settings.tolerance)
+    node = np.flatnonzero((ends > 0) & ((ends != 2) | draft.was_end))
+    within = np.where((ends[node] == 1) | draft.was_end[node], settings.joints_within, settings.tolerance)
     node, within = node[within > 0], within[within > 0]
-    own, tip = runs_at_ends(draft, laid)
     found = [_EMPTY]
     for near_row, near_mark in layout.near(draft.points[node], 1.0 + settings.joints_within):
-        away = np.abs(marks.along[near_mark] - tip[node[near_row]]) - marks.half[near_mark]
-        other = marks.run[near_mark] != own[node[near_row]]
-        other |= (ends[node[near_row]] == 1) & (away > _OWN_RUN)
+        other = ~_own_pieces(draft, layout, node[near_row], near_mark)
         other &= may_join(draft.vessel_class[node[near_row]], draft.edge_class[marks.edge[near_mark]])
         row, mark = near_row[other], near_mark[other]
         run = marks.run[mark]
@@ -137,11 +134,21 @@ def _contacts(draft: Draft, layout: Layout, settings: JoinSettings) -> _Contacts
         last, _ = laid.places(run, marks.along[mark] + marks.half[mark])
         edge, part, distance = nearest_on(draft, draft.points[node[row]], first, last)
         distance = distance / between(draft.end_radius, edge, part)
-        # a junction meets the edges that end in it at no distance
-        touching = (draft.edges[edge] == node[row][:, None]).any(axis=1)
-        close = (distance <= within[row]) & ~touching
+        close = distance <= within[row]
         found.append(_Contacts(node[row], edge, part, distance)[close])
     return _nearest_each(found)
+
+
+def _own_pieces(draft: Draft, layout: Layout, node: IntArray, mark: IntArray) -> BoolArray:
+    """Whether a piece belongs to a run that begins, ends or passes at a point, and lies near that point."""
+    marks, laid = layout.marks, layout.runs
+    run, along, half = marks.run[mark], marks.along[mark], marks.half[mark]
+    start, end = laid.offsets[run], laid.offsets[run + 1]
+    through, there = runs_at_ends(draft, laid)
+    own: BoolArray = (draft.edges[start, 0] == node) & (along - laid.along[start] - half <= _OWN_RUN)
+    own |= (draft.edges[end - 1, 1] == node) & (laid.along[end] - along - half <= _OWN_RUN)
+    own |= (through[node] == run) & (np.abs(along - there[node]) - half <= _OWN_RUN)
+    return own
 
 
 _EMPTY = _Contacts(_NONE, _NONE, np.empty(0), np.empty(0))
@@ -236,13 +243,13 @@ def _targets(draft: Draft, contacts: _Contacts, settings: JoinSettings) -> tuple
 
 
 def _same_split(draft: Draft, edge: IntArray, part: FloatArray, point: IntArray, settings: JoinSettings) -> IntArray:
-    """Pairs of new points that lie within the tolerance of one another on one edge."""
+    """Pairs of new points on one edge that are one joint."""
     order = np.lexsort((part, edge))
     one, other = order[:-1], order[1:]
     place = places_on(draft, edge, part)
     radius = between(draft.end_radius, edge, part)
     apart = np.linalg.norm(place[other] - place[one], axis=1)
-    same = (edge[one] == edge[other]) & (apart <= settings.tolerance * radius[one])
+    same = (edge[one] == edge[other]) & (apart <= settings.joints_within * radius[one])
     return np.stack((point[one[same]], point[other[same]]), axis=1)
 
 
