@@ -208,23 +208,28 @@ def _veins_finding(run: Samples, stretch: Stretch) -> Finding:
 
 
 def _records(state: Fusing, points: FloatArray, end_radius: FloatArray) -> tuple[Repair, ...]:
-    """One repair per absorbed stretch."""
+    """One repair per absorbed stretch, in the order of raw coordinates.
+
+    Ids hang on the ends and the middle of the whole line, which no limit moves.
+    """
     draft = state.draft
-    anchors = np.full((len(state.absorbed), 3), -1, np.int64)
+    groups = [taken.nodes if len(taken.nodes) else taken.line for taken in state.absorbed]
+    first = np.array([min(draft.raw_points[draft.source_point[group]].tolist()) for group in groups])
+    order = raw_order(first, np.arange(len(groups)))
     of_node = np.full(len(draft.points), -1, np.int64)
-    for number, taken in enumerate(state.absorbed):
-        source = draft.source_point[taken.nodes if len(taken.nodes) else draft.edges[taken.samples.edge[:1]].ravel()]
-        anchors[number] = source[[0, len(source) // 2, -1]]
-        of_node[taken.nodes] = number
-    ids = anchor_ids("fused-copies", draft.raw_points, anchors)
+    for number, row in enumerate(order.tolist()):
+        of_node[state.absorbed[row].nodes] = number
     merged_into = draft.merged_into
     raw = np.flatnonzero((merged_into >= 0) & (of_node[np.maximum(merged_into, 0)] >= 0))
     of_raw = of_node[merged_into[raw]]
     raw = raw[np.argsort(of_raw, kind="stable")]
-    bounds = np.cumsum(np.bincount(of_raw, minlength=len(ids)))[:-1]
+    bounds = np.cumsum(np.bincount(of_raw, minlength=len(order)))[:-1]
+    absorbed = [state.absorbed[row] for row in order.tolist()]
+    lines = draft.source_point[np.stack([taken.line for taken in absorbed])]
+    ids = anchor_ids("fused-copies", draft.raw_points, lines)
     return tuple(
         _record(state, taken, str(name), tuple(group.tolist()), (points, end_radius))
-        for taken, name, group in zip(state.absorbed, ids, np.split(raw, bounds), strict=True)
+        for taken, name, group in zip(absorbed, ids, np.split(raw, bounds), strict=True)
     )
 
 

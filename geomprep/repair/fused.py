@@ -35,6 +35,8 @@ class Absorbed:
     part : (k,) float array
     nodes : (a,) int array
         Points of the run that were absorbed.
+    line : (4,) int array
+        Points at the start, halfway (twice) and the end of the whole run.
     """
 
     stretch: Stretch
@@ -42,6 +44,7 @@ class Absorbed:
     edge: IntArray
     part: FloatArray
     nodes: IntArray
+    line: IntArray
 
 
 class Fusing:
@@ -131,7 +134,9 @@ class Fusing:
             self._tie(run, beside, stretch.last, (last + 1, 0), nodes[-1:])
         self.gone[first : last + 1] = True
         taken = slice(stretch.first, stretch.last + 1)
-        self.absorbed.append(Absorbed(stretch, run[taken], beside.edge[taken], beside.part[taken], nodes))
+        whole = np.append(self.draft.edges[low : high + 1, 0], self.draft.edges[high, 1])
+        line = whole[[0, (len(whole) - 1) // 2, len(whole) // 2, -1]]
+        self.absorbed.append(Absorbed(stretch, run[taken], beside.edge[taken], beside.part[taken], nodes, line))
         return first, last
 
     def _tie(self, run: Samples, beside: Beside, row: int, boundary: tuple[int, int], last: IntArray) -> None:
