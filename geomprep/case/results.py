@@ -8,7 +8,7 @@ import numpy as np
 
 from geomprep.curves import resistance_share
 from geomprep.errors import InputError
-from geomprep.export import ExportContext, write_network
+from geomprep.export import ExportContext, write_network, write_overview, write_tables
 from geomprep.files import write_lines
 from geomprep.model import FloatArray, Network, SteadyState
 from geomprep.units import STANDARD_GRAVITY
@@ -42,7 +42,9 @@ def write_results(
         folder.mkdir(parents=True, exist_ok=True)
     except OSError as fault:
         raise InputError(f"{folder}: cannot be made ({fault.strerror}); choose another folder with -o") from fault
+    write_tables(folder, network, state, context)
     _write_lines(folder / "lines.vtp", network, state, station_height)
+    write_overview(folder / "overview.svg", network, state, context)
     write_network(folder / "network.json", network, state, context)
 
 
