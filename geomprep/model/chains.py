@@ -98,9 +98,11 @@ def chains(n_points: int, edges: IntArray, stop: BoolArray | None = None) -> Cha
     if stop is not None:
         through &= ~stop
     successor = _successors(edges, through)
-    _open_rings(edges, successor)
-    last, rank = _doubled(successor, len(edges))
-    return _ordered(edges, successor, last, rank, through)
+    last, rank, ended = _doubled(successor, len(edges))
+    if not ended.all():  # a ring leads nowhere
+        _open_rings(edges, successor, ~ended[: len(edges)])
+        last, rank, _ = _doubled(successor, len(edges))
+    return _ordered(edges, last, rank, through)
 
 
 def _none() -> IntArray:
@@ -113,31 +115,24 @@ def _successors(edges: IntArray, through: BoolArray) -> IntArray:
     n_edges = len(edges)
     tail = np.concatenate((edges[:, 0], edges[:, 1]))
     half = np.flatnonzero(through[tail])
-    order = half[np.argsort(tail[half], kind="stable")]
-    first, second = order[0::2], order[1::2]  # two halves leave every point of degree 2
+    # two halves leave every point of degree 2: their sum less one of them is the other
+    total = np.bincount(tail[half], half, minlength=len(through)).astype(np.int64)
     successor = np.full(2 * n_edges, -1, np.int64)
-    # the half that arrives where `first` leaves is the reverse of `first`
-    successor[(first + n_edges) % (2 * n_edges)] = second
-    successor[(second + n_edges) % (2 * n_edges)] = first
+    # the half that arrives where one leaves is the reverse of it
+    successor[half + np.where(half < n_edges, n_edges, -n_edges)] = total[tail[half]] - half
     return successor
 
 
-def _open_rings(edges: IntArray, successor: IntArray) -> None:
+def _open_rings(edges: IntArray, successor: IntArray, on_ring: BoolArray) -> None:
     """Cut closed rings at their smallest point so that every chain has an end (in place)."""
     n_edges = len(edges)
-    linked = np.flatnonzero(successor[:n_edges] >= 0)
-    both = successor[:n_edges] >= 0
-    both &= successor[n_edges:] >= 0
-    if not both.any():
-        return
-    left = np.concatenate((linked, np.flatnonzero(successor[n_edges:] >= 0)))
-    right = np.concatenate((successor[linked], successor[n_edges:][successor[n_edges:] >= 0])) % n_edges
-    matrix = coo_array((np.ones(len(left), np.int8), (left, right)), shape=(n_edges, n_edges))
+    half = np.flatnonzero(np.concatenate((on_ring, on_ring)))
+    matrix = coo_array(
+        (np.ones(len(half), np.int8), (half % n_edges, successor[half] % n_edges)), shape=(n_edges, n_edges)
+    )
     count, label = connected_components(matrix, directed=False)
-    closed = np.ones(count, np.bool_)
-    closed[label[~both]] = False
-    if not closed.any():
-        return
+    closed = np.zeros(count, np.bool_)
+    closed[label[on_ring]] = True
     _cut_at_smallest(edges, successor, label, closed)
 
 
@@ -152,35 +147,38 @@ def _cut_at_smallest(edges: IntArray, successor: IntArray, label: IntArray, clos
     successor[both_halves[head == smallest[label[both_halves % n_edges]]]] = -1
 
 
-def _doubled(successor: IntArray, n_edges: int) -> tuple[IntArray, IntArray]:
-    """Last half reached from each half, and the number of steps to it.
+def _doubled(successor: IntArray, n_edges: int) -> tuple[IntArray, IntArray, BoolArray]:
+    """Last half reached from each half, the number of steps to it, and whether there is a last one.
 
     Halves whose successor is the next number (or the previous, backwards) are first taken
-    together as runs, so that the doubling works on run ends only.
+    together as runs, so that the doubling works on run ends only; those that have
+    arrived take no further part.
     """
     n_half = 2 * n_edges
     index = np.arange(n_half, dtype=np.int64)
-    step = np.where(index < n_edges, index + 1, index - 1)
-    in_run = successor == step
+    in_run = successor == np.where(index < n_edges, index + 1, index - 1)
     in_run[[n_edges - 1, n_edges]] = False  # a run stays among forward or among backward halves
     run_end, distance = _run_ends(in_run, n_edges)
     heads = np.flatnonzero(~in_run)  # halves that end a run
     position = np.full(n_half, -1, np.int64)
     position[heads] = np.arange(len(heads))
     target = successor[heads]
-    has = target >= 0
+    goes_on = target >= 0
+    active = np.flatnonzero(goes_on)
     jump = np.arange(len(heads), dtype=np.int64)
     weight = np.zeros(len(heads), np.int64)
-    jump[has] = position[run_end[target[has]]]
-    weight[has] = 1 + distance[target[has]]
+    jump[active] = position[run_end[target[active]]]
+    weight[active] = 1 + distance[target[active]]
     for _ in range(int(n_half).bit_length() + 1):
-        onward = jump[jump]
-        if np.array_equal(onward, jump):
+        active = active[goes_on[jump[active]]]
+        if len(active) == 0:
             break
-        weight = weight + weight[jump]
-        jump = onward
+        onward = jump[active]
+        more, further = weight[onward], jump[onward]
+        weight[active] += more
+        jump[active] = further
     reached = position[run_end]
-    return heads[jump[reached]], distance + weight[reached]
+    return heads[jump[reached]], distance + weight[reached], ~goes_on[jump[reached]]
 
 
 def _run_ends(in_run: BoolArray, n_edges: int) -> tuple[IntArray, IntArray]:
@@ -193,24 +191,29 @@ def _run_ends(in_run: BoolArray, n_edges: int) -> tuple[IntArray, IntArray]:
     return end, np.abs(end - index)
 
 
-def _ordered(edges: IntArray, successor: IntArray, last: IntArray, rank: IntArray, through: BoolArray) -> Chains:
+def _ordered(edges: IntArray, last: IntArray, rank: IntArray, through: BoolArray) -> Chains:
     """Lay the halves of each chain in order; of the two directions keep one."""
     n_edges = len(edges)
-    reverse = (np.arange(2 * n_edges) + n_edges) % (2 * n_edges)
+    half = np.arange(2 * n_edges)
+    reverse = np.where(half < n_edges, half + n_edges, half - n_edges)
     first = reverse[last[reverse]]  # the half that starts the chain of each half
     forward = np.flatnonzero(_keep_direction(first, last, n_edges))
-    key = np.minimum(first[forward] % n_edges, last[forward] % n_edges)
-    order = forward[np.lexsort((-rank[forward], first[forward], key))]
-    starts = np.flatnonzero(first[order] == order)
-    lengths = np.diff(np.append(starts, len(order)))
-    edge = order % n_edges
-    head = np.where(order < n_edges, edges[edge, 1], edges[edge, 0])
-    offsets = np.concatenate(([0], np.cumsum(lengths + 1)))
+    start = forward[first[forward] == forward]
+    start = start[np.lexsort((start, np.minimum(start % n_edges, last[start] % n_edges)))]
+    chain = np.empty(2 * n_edges, np.int64)
+    chain[start] = np.arange(len(start))
+    lengths = rank[start] + 1
+    edge_offsets = np.concatenate(([0], np.cumsum(lengths)))
+    order = np.empty(n_edges, np.int64)
+    order[edge_offsets[chain[first[forward]]] + rank[first[forward]] - rank[forward]] = forward
+    edge = np.where(order < n_edges, order, order - n_edges)
+    flat = np.concatenate((edges[:, 0], edges[:, 1]))
+    offsets = edge_offsets + np.arange(len(start) + 1)
     point = np.empty(offsets[-1], np.int64)
-    point[offsets[:-1]] = np.where(order[starts] < n_edges, edges[edge[starts], 0], edges[edge[starts], 1])
+    point[offsets[:-1]] = flat[start]
     inner = np.ones(len(point), np.bool_)
     inner[offsets[:-1]] = False
-    point[inner] = head
+    point[inner] = flat[reverse[order]]
     ring = (point[offsets[:-1]] == point[offsets[1:] - 1]) & through[point[offsets[:-1]]]
     return Chains(point, offsets.astype(np.int64), edge.astype(np.int64), ring)
 

@@ -1,7 +1,7 @@
 """Time joining on clean inputs of growing size: ``python tests/benchmarks/join_speed.py [points …]``.
 
-Data: random binary trees of segments with 20 points each (poly-lines with private copies of
-their end points), the same as shuffled and randomly flipped two-point lines with private
+Data: binary trees of lines with 20 points each on one trunk (poly-lines with private copies of
+their end points, no two of which touch), the same as shuffled and randomly flipped two-point lines with private
 copies of both points, and the poly-lines with 3 % T-joints added.
 """
 
@@ -16,32 +16,36 @@ from geomprep.model import Centrelines
 from geomprep.repair import join
 
 PER_LINE = 20
+LINES = 63
 
 
 def tree(n_points: int, seed: int = 0) -> tuple[np.ndarray, np.ndarray]:
-    """Positions (lines, 20, 3) and radius (lines,) of a random binary tree."""
+    """Positions (lines, 20, 3) and radius (lines,): binary trees of 63 lines that hang on one long trunk."""
     rng = np.random.default_rng(seed)
-    n_lines = max(1, n_points // PER_LINE)
-    start = np.zeros((n_lines, 3))
-    direction = np.zeros((n_lines, 3))
-    direction[0, 2] = 1.0
-    radius = np.full(n_lines, 5e-3)
-    level, first = 0, 0
-    while first < n_lines:
-        last = min(2 * first + 1, n_lines)
-        if level:
-            parent = (np.arange(first, last) - 1) // 2
-            radius[first:last] = radius[parent] * rng.uniform(0.72, 0.86, last - first)
-            start[first:last] = start[parent] + direction[parent] * 12 * radius[parent, None]
-            turn = rng.normal(size=(last - first, 3))
-            turned = direction[parent] + 0.8 * turn / np.linalg.norm(turn, axis=1)[:, None]
-            direction[first:last] = turned / np.linalg.norm(turned, axis=1)[:, None]
-        first, level = last, level + 1
+    n_trees = max(1, n_points // PER_LINE // (LINES + 1))
+    start = np.zeros((n_trees, LINES, 3))
+    ahead, across = np.zeros_like(start), np.zeros_like(start)
+    radius = np.full((n_trees, LINES), 4e-3)
+    ahead[:, 0, 2], across[:, 0, 0] = 1.0, 1.0
+    for line in range(1, LINES):
+        parent = (line - 1) // 2
+        angle = np.radians(rng.uniform(30, 42, n_trees))[:, None] * (1 if line % 2 else -1)
+        radius[:, line] = radius[:, parent] * rng.uniform(0.74, 0.84, n_trees)
+        start[:, line] = start[:, parent] + 14 * radius[:, parent, None] * ahead[:, parent]
+        ahead[:, line] = np.cos(angle) * ahead[:, parent] + np.sin(angle) * across[:, parent]
+        across[:, line] = np.cross(ahead[:, line], across[:, parent])
+        across[:, line] /= np.linalg.norm(across[:, line], axis=1)[:, None]
+    end = start + 14 * radius[:, :, None] * ahead
+    shift = np.arange(n_trees + 1)[:, None] * [0.6, 0, 0]
+    start, end = start + shift[:-1, None], end + shift[:-1, None]
+    # the end of a parent and the start of a branch are the same numbers
+    start[:, 1:] = end[:, (np.arange(1, LINES) - 1) // 2]
+    trunk = shift[:-1], shift[1:], np.full(n_trees, 5e-3)
+    start, end = np.concatenate((start.reshape(-1, 3), trunk[0])), np.concatenate((end.reshape(-1, 3), trunk[1]))
     along = np.linspace(0, 1, PER_LINE)[None, :, None]
-    end = start + direction * 12 * radius[:, None]
     points = start[:, None] + along * (end - start)[:, None]
     points[:, -1] = end
-    return points, radius
+    return points, np.concatenate((radius.ravel(), trunk[2]))
 
 
 def as_lines(points: np.ndarray, radius: np.ndarray) -> Centrelines:
@@ -76,7 +80,7 @@ def with_t_joints(points: np.ndarray, radius: np.ndarray, seed: int = 2) -> Cent
     """The tree with one short line in 33 more that starts between two points of another."""
     rng = np.random.default_rng(seed)
     parent = rng.choice(len(points), len(points) // 33, replace=False)
-    place = 0.37 * points[parent, 9] + 0.63 * points[parent, 10]
+    place = 0.37 * points[parent, 6] + 0.63 * points[parent, 7]
     out = rng.normal(size=(len(parent), 3))
     out /= np.linalg.norm(out, axis=1)[:, None]
     twig = place[:, None] + np.linspace(0, 4, PER_LINE)[None, :, None] * (radius[parent, None] * out)[:, None]
