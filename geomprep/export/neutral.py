@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import os
 from collections.abc import Mapping
+from itertools import chain
+from math import isfinite
 from pathlib import Path
 from typing import Any
 
@@ -147,8 +149,22 @@ def _refuse_infinite(place: str, value: Any) -> None:
                 "every number must be finite"
             )
     elif isinstance(value, list | tuple):
+        if _all_finite(value):
+            return
         for number, inner in enumerate(value):
-            if not isinstance(inner, str):
-                _refuse_infinite(f"{place}[{number}]", inner)
+            _refuse_infinite(f"{place}[{number}]", inner)
     elif isinstance(value, float | np.floating) and not np.isfinite(value):
         raise NetworkFileError(f"{place}: {value} cannot be written; every number must be finite")
+
+
+def _all_finite(rows: list[Any] | tuple[Any, ...]) -> bool:
+    """Whether a list of texts, or of flat records of texts and numbers, holds finite numbers only."""
+    kinds = set(map(type, rows))
+    if kinds <= {str}:
+        return True
+    if kinds != {dict}:
+        return False
+    values = list(chain.from_iterable(row.values() for row in rows))
+    if not set(map(type, values)) <= {str, int, float, bool, type(None)}:
+        return False
+    return all(map(isfinite, (value for value in values if type(value) is float)))

@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import csv
-import io
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
@@ -12,6 +10,7 @@ import numpy as np
 import numpy.typing as npt
 
 from geomprep.atomic import write_atomic
+from geomprep.export.companion import MOST_STATIONS_INSIDE
 from geomprep.export.context import ExportContext
 from geomprep.model import BASIS_NAMES, NODE_ROLES, VESSEL_CLASSES, Network, SteadyState
 
@@ -22,6 +21,8 @@ Columns = Mapping[str, Sequence[object] | npt.NDArray[Any]]
 
 def write_tables(folder: Path, network: Network, state: SteadyState, context: ExportContext) -> tuple[Path, ...]:
     """Write nodes, segments, stations, findings and repairs as CSV files.
+
+    Above 200,000 stations these stand in the companion of the network file and in ``lines.vtp`` only.
 
     Parameters
     ----------
@@ -46,6 +47,8 @@ def write_tables(folder: Path, network: Network, state: SteadyState, context: Ex
     for name, text in table_texts(network, state, context).items():
         write_atomic(folder / name, text.encode())
         written.append(folder / name)
+    if len(network.stations) > MOST_STATIONS_INSIDE:
+        (folder / "stations.csv").unlink(missing_ok=True)  # of an earlier, smaller build
     return tuple(written)
 
 
@@ -54,27 +57,42 @@ def table_texts(network: Network, state: SteadyState, context: ExportContext) ->
 
     Numbers are written with as many digits as give them back exactly.
     """
-    return {
+    few = len(network.stations) <= MOST_STATIONS_INSIDE
+    texts = {
         "nodes.csv": _csv(_node_columns(network, state)),
         "segments.csv": _csv(_segment_columns(network, state)),
-        "stations.csv": _csv(_station_columns(network)),
         "findings.csv": _csv(_finding_columns(context)),
         "repairs.csv": _csv(_repair_columns(context)),
     }
+    return texts | ({"stations.csv": _csv(_station_columns(network))} if few else {})
 
 
 def _csv(columns: Columns) -> str:
-    """Columns as CSV with one header line."""
-    out = io.StringIO()
-    writer = csv.writer(out, lineterminator="\n")
-    writer.writerow(columns)
-    writer.writerows(zip(*(_cells(column) for column in columns.values()), strict=True))
-    return out.getvalue()
+    """Columns as CSV (RFC 4180, lines ended by a line feed) with one header line."""
+    header = ",".join(_quoted(name) for name in columns)
+    rows = map(",".join, zip(*(_cells(column) for column in columns.values()), strict=True))
+    return "\n".join([header, *rows]) + "\n"
 
 
-def _cells(column: Sequence[object] | npt.NDArray[Any]) -> Iterable[object]:
-    """Values of a column; numbers as Python numbers, which print in full."""
-    return column.tolist() if isinstance(column, np.ndarray) else column
+def _cells(column: Sequence[object] | npt.NDArray[Any]) -> list[str]:
+    """Texts of a column; numbers with the fewest digits that give them back exactly."""
+    if isinstance(column, np.ndarray) and column.dtype.kind in "fiu":
+        import orjson
+
+        if len(column) == 0:
+            return []
+        return orjson.dumps(np.ascontiguousarray(column), option=orjson.OPT_SERIALIZE_NUMPY)[1:-1].decode().split(",")
+    texts = list(map(str, column))
+    whole = "\n".join(texts)
+    plain = whole.count("\n") < max(len(texts), 1) and not any(sign in whole for sign in ',"\r')
+    return texts if plain else list(map(_quoted, texts))
+
+
+def _quoted(text: str) -> str:
+    """A text as one cell."""
+    if any(sign in text for sign in ',"\n\r'):
+        return '"' + text.replace('"', '""') + '"'
+    return text
 
 
 def _named(codes: npt.NDArray[Any], names: Sequence[str]) -> npt.NDArray[Any]:

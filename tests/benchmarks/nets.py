@@ -8,6 +8,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from scipy.spatial import cKDTree
 
 
 @dataclass(frozen=True)
@@ -21,28 +22,35 @@ class Lines:
 
 
 def tree(n_points: int, per_line: int = 20, seed: int = 1) -> Lines:
-    """Binary tree in which every line has its own copy of its end points, with 3 % extra lines that close loops."""
+    """Binary tree whose lines each hold a copy of their end points, with 3 % extra lines that close loops.
+
+    Radii fall by 0.79 per fork (Murray's law for equal daughters), a line is 14 radii long and its points lie 0.7 radii
+    apart: the proportions of vessels drawn from an image, in which tubes seldom touch.
+    """
     random = np.random.default_rng(seed)
     n_lines = max(1, n_points // per_line)
     n_extra = int(0.03 * n_lines)
     n_tree = n_lines - n_extra
     parent = (np.arange(n_tree) - 1) // 2
     depth = np.floor(np.log2(np.arange(n_tree) + 1)).astype(int)
-    length = 20.0 * 0.9**depth + 2.0
+    size = 2.5 * 0.79**depth
     heading = random.normal(size=(n_tree, 3))
     heading /= np.linalg.norm(heading, axis=1, keepdims=True)
     end = np.zeros((n_tree, 3))
     for level in range(depth.max() + 1):
         rows = np.flatnonzero(depth == level)
+        if level:
+            heading[rows] += heading[parent[rows]]  # daughters go on rather than back
+            heading[rows] /= np.linalg.norm(heading[rows], axis=1, keepdims=True)
         start = end[np.maximum(parent[rows], 0)] if level else np.zeros((len(rows), 3))
-        end[rows] = start + heading[rows] * length[rows, None]
+        end[rows] = start + heading[rows] * 14.0 * size[rows, None]
     start = np.where((parent >= 0)[:, None], end[np.maximum(parent, 0)], 0.0)
-    a, b = random.integers(1, n_tree, n_extra), random.integers(1, n_tree, n_extra)
+    a = random.integers(1, n_tree, n_extra)
+    b = cKDTree(end).query(end[a], k=min(6, n_tree))[1][:, -1] if n_extra else a
     start, end = np.concatenate((start, end[a])), np.concatenate((end, end[b]))
+    size = np.concatenate((size, 0.8 * np.minimum(size[a], size[b])))
     keep = np.linalg.norm(end - start, axis=1) > 1e-3
-    start, end = start[keep], end[keep]
-    size = np.concatenate((2.5 * 0.87**depth + 0.1, np.full(n_extra, 0.12)))[keep]
-    return _lines(start, end, size, per_line, random)
+    return _lines(start[keep], end[keep], size[keep], per_line, random)
 
 
 def _lines(start: np.ndarray, end: np.ndarray, size: np.ndarray, per_line: int, random: np.random.Generator) -> Lines:

@@ -1,8 +1,8 @@
 """Tables and pictures say what the network says."""
 
 import csv
-import xml.etree.ElementTree as ElementTree
 from pathlib import Path
+from xml.etree import ElementTree
 
 import numpy as np
 import pytest
