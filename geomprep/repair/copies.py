@@ -21,6 +21,8 @@ _STEP = 0.25
 """Largest distance between samples, in radii."""
 _CANDIDATES = 3
 """Nearest samples whose edges are looked at."""
+_REACH = 6.0
+"""Radii beyond which nothing is looked for: distances above 3 radii all count the same."""
 _PAIR = 2.0
 """Two lines within x of a common middle line are within 2 x of one another."""
 _WEAK = 3.0
@@ -56,14 +58,12 @@ def fuse_copies(
     apart = _PAIR * settings.copies_within
     if apart <= 0:
         return draft, (), ()
-    pairs = overlapping_runs(draft, layout, _WEAK * apart, settings.copies_radius_ratio)
-    if len(pairs) == 0:
+    which = overlapping_runs(draft, layout, _WEAK * apart, settings.copies_radius_ratio)
+    if len(which) == 0:
         return draft, (), ()
-    which, pair = np.unique(pairs, return_inverse=True)
-    pair = pair.reshape(pairs.shape)
     samples, rows = _sampled(draft, layout.runs, which)
     order = _longest_first(draft, layout.runs, which)
-    state, findings = _absorbed_in_turn(draft, (samples, rows), pair, order, settings)
+    state, findings = _absorbed_in_turn(draft, (samples, rows), order, settings)
     if not state.absorbed:
         return draft, (), findings
     points, end_radius = averaged(state, 1.5 * apart)
@@ -107,22 +107,17 @@ def _longest_first(draft: Draft, laid: Runs, which: IntArray) -> list[int]:
 
 
 def _absorbed_in_turn(
-    draft: Draft, sampled: tuple[Samples, IntArray], pair: IntArray, order: list[int], settings: JoinSettings
+    draft: Draft, sampled: tuple[Samples, IntArray], order: list[int], settings: JoinSettings
 ) -> tuple[Fusing, tuple[Finding, ...]]:
     """Take runs into the kept network one by one, without what is a copy of it."""
     samples, rows = sampled
-    partners: dict[int, list[int]] = {number: [] for number in order}
-    for one, other in pair.tolist():
-        partners[one].append(other)
-        partners[other].append(one)
     state, forest = Fusing(draft, 4 * len(order) + 8), Forest()
-    kept: set[int] = set()
     findings: list[Finding] = []
     for number in order:
         start, end = int(rows[number]), int(rows[number + 1])
         run = samples[start:end]
         stays = np.ones(end - start, np.bool_)
-        if not kept.isdisjoint(partners[number]):
+        if len(forest):
             beside = _beside(state, forest, samples, run)
             stretches, aside = _decided(draft, run, beside, state, settings)
             findings += aside
@@ -135,14 +130,13 @@ def _absorbed_in_turn(
         stays &= ~state.gone[run.edge]
         state.keep(np.unique(run.edge[~state.gone[run.edge]]))
         forest.add(start + np.flatnonzero(stays), samples.point)
-        kept.add(number)
     return state, tuple(findings)
 
 
 def _beside(state: Fusing, forest: Forest, samples: Samples, run: Samples) -> Beside:
     """Nearest place on kept edges for each sample of a run."""
     draft = state.draft
-    row = forest.nearest(run.point, _CANDIDATES)
+    row = forest.nearest(run.point, _CANDIDATES, _REACH * float(run.radius.max()))
     edge = samples.edge[row]
     before = np.maximum(edge - 1, 0)
     follows = state.edges[before, 1] == state.edges[edge, 0]

@@ -82,11 +82,9 @@ def join(centrelines: Centrelines, settings: JoinSettings | None = None) -> Join
     draft, findings = started(centrelines)
     draft, found = _coincident(draft, settings)
     findings += found
-    if len(draft.edges) == 0:
-        raise InputError("every line lies within one point; a network needs at least one line with a length")
-    draft, repairs = _without_lost_points(draft)
-    draft, more, found = _nearby(draft, settings)
-    repairs, findings = repairs + more, findings + found
+    draft, repairs = _compacted(laid_in_runs(draft), ())
+    draft, repairs, found = _nearby(draft, repairs, settings)
+    findings += found
     graph, radius_findings = _finished(draft)
     findings += radius_findings
     findings += class_findings(centrelines.vessel_class, draft.edge_class, draft.edges, draft.points)
@@ -105,27 +103,29 @@ def _coincident(draft: Draft, settings: JoinSettings) -> tuple[Draft, tuple[Find
     return draft, findings
 
 
-def _nearby(draft: Draft, settings: JoinSettings) -> tuple[Draft, tuple[Repair, ...], tuple[Finding, ...]]:
+def _nearby(
+    draft: Draft, repairs: tuple[Repair, ...], settings: JoinSettings
+) -> tuple[Draft, tuple[Repair, ...], tuple[Finding, ...]]:
     """Fuse copies of trunks, then join open ends to ends and to sides within a part of the radius."""
-    draft = laid_in_runs(draft)
     layout = Layout.of(draft)
-    fused, repairs, findings = fuse_copies(draft, layout, settings)
-    draft, layout = _laid_again(draft, fused, layout, settings)
-    joined, ends = join_near_open_ends(draft, layout.runs, settings.joints_within)
-    draft, layout = _laid_again(draft, joined, layout, settings)
-    joined, sides = join_sides(draft, layout, settings)
+    fused, more, findings = fuse_copies(draft, layout, settings)
+    if fused is not draft:
+        draft, repairs = _settled(fused, repairs + more, settings)
+        layout = Layout.of(draft)
+    joined, more = join_near_open_ends(draft, layout.runs, settings.joints_within)
     if joined is not draft:
-        joined, _ = compacted(single_edges(joined, settings.radii_agree_within)[0])
-    return joined, repairs + ends + sides, findings
+        draft, repairs = _settled(joined, repairs + more, settings)
+        layout = Layout.of(draft)
+    joined, more = join_sides(draft, layout, settings)
+    if joined is not draft:
+        draft, repairs = _settled(joined, repairs + more, settings)
+    return draft, repairs, findings
 
 
-def _laid_again(before: Draft, after: Draft, layout: Layout, settings: JoinSettings) -> tuple[Draft, Layout]:
-    """Runs and marks anew where a step has changed the draft."""
-    if after is before:
-        return before, layout
-    single, _ = single_edges(after, settings.radii_agree_within)
-    laid = laid_in_runs(compacted(single)[0])
-    return laid, Layout.of(laid)
+def _settled(draft: Draft, repairs: tuple[Repair, ...], settings: JoinSettings) -> tuple[Draft, tuple[Repair, ...]]:
+    """Single edges, laid in runs, and no points without edges, after a step has changed the draft."""
+    single, _ = single_edges(draft, settings.radii_agree_within)
+    return _compacted(laid_in_runs(single), repairs)
 
 
 def _joined_finding(joined: int, tolerance: float) -> Finding:
@@ -138,13 +138,15 @@ def _joined_finding(joined: int, tolerance: float) -> Finding:
     )
 
 
-def _without_lost_points(draft: Draft) -> tuple[Draft, tuple[Repair, ...]]:
+def _compacted(draft: Draft, repairs: tuple[Repair, ...]) -> tuple[Draft, tuple[Repair, ...]]:
     """Leave out points without edges; record the lines that shrank to one place."""
+    if len(draft.edges) == 0:
+        raise InputError("every line lies within one point; a network needs at least one line with a length")
     kept, lost = compacted(draft)
     if len(lost) == 0:
-        return kept, ()
+        return kept, repairs
     merged_into = kept.merged_into.copy()
-    merged_into[lost] = -1
+    merged_into[lost] = -1 - len(repairs)
     x, y, z = draft.points[draft.merged_into[lost[0]]].tolist()
     record = Repair(
         id=str(anchor_ids("line-of-no-length", draft.raw_points, lost[None])[0]),
@@ -155,7 +157,7 @@ def _without_lost_points(draft: Draft) -> tuple[Draft, tuple[Repair, ...]]:
         options=("drop",),
         raw_points=tuple(lost.tolist()),
     )
-    return replace(kept, merged_into=merged_into), (record,)
+    return replace(kept, merged_into=merged_into), (*repairs, record)
 
 
 def _finished(draft: Draft) -> tuple[PointGraph, tuple[Finding, ...]]:

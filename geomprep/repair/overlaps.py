@@ -16,6 +16,8 @@ from geomprep.repair.runs import Marks, Runs, marked, nearest_on, places_on, run
 __all__ = ["Layout", "overlapping_runs"]
 
 _COS_APART = np.cos(np.radians(30.0))
+_PROBES, _CROWD, _NEAREST = 500, 30.0, 12
+"""Where a sample of marks has more neighbours than that, as with fifty copies, only the nearest are paired."""
 _REACH = 1.25
 """Marks of two overlapping runs lie within this many sizes of one another."""
 
@@ -70,20 +72,35 @@ def _pairs(layout: Layout) -> IntArray:
     before: tuple[IntArray, KDTree | None] = (np.empty(0, np.int64), None)
     for which, tree, size in layout.levels:
         if tree is not None:
-            found.append(which[tree.query_pairs(_REACH * size, output_type="ndarray")])
+            pairs = _within(tree, tree, _REACH * size)
+            found.append(which[pairs])
             if before[1] is not None:
-                cross = before[1].sparse_distance_matrix(tree, _REACH * size, output_type="ndarray")
-                found.append(np.stack((before[0][cross["i"]], which[cross["j"]]), axis=1))
+                cross = _within(before[1], tree, _REACH * size)
+                found.append(np.stack((before[0][cross[:, 0]], which[cross[:, 1]]), axis=1))
         before = (which, tree)
-    pairs = np.concatenate(found).astype(np.int64)
+    pairs = np.concatenate(found)
     pairs = pairs[marks.run[pairs[:, 0]] != marks.run[pairs[:, 1]]]
     apart = np.linalg.norm(marks.point[pairs[:, 0]] - marks.point[pairs[:, 1]], axis=1)
     close: IntArray = pairs[apart <= _REACH * marks.size[pairs].max(axis=1)]
     return close
 
 
+def _within(one: KDTree, other: KDTree, reach: float) -> IntArray:
+    """Pairs of points of two trees within reach; where they crowd, each with its nearest few only."""
+    some = one.data[:: max(1, len(one.data) // _PROBES)]
+    crowd = float(other.query_ball_point(some, reach, return_length=True).mean())
+    if crowd > _CROWD:
+        distance, index = other.query(one.data, k=_NEAREST, distance_upper_bound=reach)
+        row, column = np.nonzero(np.isfinite(distance))
+        return np.stack((row, index[row, column]), axis=1)
+    if one is other:
+        return np.asarray(one.query_pairs(reach, output_type="ndarray"), np.int64)
+    found = one.sparse_distance_matrix(other, reach, output_type="ndarray")
+    return np.stack((found["i"], found["j"]), axis=1).astype(np.int64)
+
+
 def overlapping_runs(draft: Draft, layout: Layout, within: float, radius_ratio: float) -> IntArray:
-    """Pairs of runs that lie along one another for two radii somewhere, (p, 2).
+    """Runs that lie along another one for two radii somewhere.
 
     Parameters
     ----------
@@ -106,12 +123,11 @@ def overlapping_runs(draft: Draft, layout: Layout, within: float, radius_ratio: 
     pairs = pairs[np.maximum(ratio, 1.0 / ratio) <= radius_ratio]
     pairs = pairs[_along(draft, layout, pairs)]
     if len(pairs) == 0:
-        return pairs
+        return pairs[:, 0]
     both_ways = np.concatenate((pairs, pairs[:, ::-1]))
     near = _near_three(draft, layout, both_ways, within)
     kept = both_ways[near]
-    run = np.sort(marks.run[kept], axis=1)
-    return np.unique(run, axis=0)
+    return np.unique(marks.run[kept])
 
 
 def _along(draft: Draft, layout: Layout, pairs: IntArray) -> BoolArray:

@@ -64,6 +64,7 @@ class JoinSettings:
 
 
 _RANGES = {
+    "copies_within": (0.0, 0.2, "a part of the radius; lines further apart are not copies"),
     "copies_overlap": (1.0, 100.0, "a length in radii"),
     "copies_radius_ratio": (1.0, 10.0, "a ratio of radii"),
 }

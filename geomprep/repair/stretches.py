@@ -86,6 +86,9 @@ class Forest:
     def __init__(self) -> None:
         self._trees: list[tuple[IntArray, KDTree]] = []
 
+    def __len__(self) -> int:
+        return sum(len(rows) for rows, _ in self._trees)
+
     def add(self, rows: IntArray, points: FloatArray) -> None:
         """Add rows; `points` holds the places of all rows."""
         while self._trees and len(self._trees[-1][0]) <= len(rows):
@@ -93,12 +96,12 @@ class Forest:
         if len(rows):
             self._trees.append((rows, KDTree(points[rows])))
 
-    def nearest(self, places: FloatArray, count: int) -> IntArray:
-        """Rows of the nearest samples, (q, c); −1 where there are fewer."""
+    def nearest(self, places: FloatArray, count: int, within: float) -> IntArray:
+        """Rows of the nearest samples not farther than a distance, (q, c); −1 where there are fewer."""
         found = []
         apart = []
         for rows, tree in self._trees:
-            distance, index = tree.query(places, k=count)
+            distance, index = tree.query(places, k=count, distance_upper_bound=within)
             index = index.reshape(len(places), count)
             found.append(np.append(rows, -1)[np.minimum(index, len(rows))])
             apart.append(distance.reshape(len(places), count))
