@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
 from geomprep.curves import piece_integrals
 from geomprep.findings import Finding, Severity
 from geomprep.model import FloatArray, IntArray, Repair, anchor_ids, raw_order
 from geomprep.repair.classes import VEIN, may_join
-from geomprep.repair.draft import Draft
+from geomprep.repair.draft import LEFT_ALONE, Draft
 from geomprep.repair.fused import Absorbed, Fusing, averaged, fused_draft
 from geomprep.repair.overlaps import Layout, overlapping_runs
 from geomprep.repair.runs import Runs, between, nearest_part, places_on
@@ -17,6 +19,7 @@ from geomprep.repair.stretches import Beside, Forest, Limits, Samples, Stretch, 
 
 __all__ = ["fuse_copies"]
 
+_LISTED = 50
 _STEP = 0.25
 """Largest distance between samples, in radii."""
 _CANDIDATES = 3
@@ -64,6 +67,8 @@ def fuse_copies(
     samples, rows = _sampled(draft, layout.runs, which)
     order = _longest_first(draft, layout.runs, which)
     state, findings = _absorbed_in_turn(draft, (samples, rows), order, settings)
+    draft = state.draft = _ends_left_alone(draft, state)
+    findings = _few(findings)
     if not state.absorbed:
         return draft, (), findings
     points, end_radius = averaged(state, 1.5 * apart)
@@ -175,9 +180,35 @@ def _decided(
     covered = np.zeros(len(run.edge), np.bool_)
     for stretch in same:
         covered[stretch.first : stretch.last + 1] = True
-    return same, [
-        _veins_finding(run, stretch) for stretch in stretches if not covered[(stretch.first + stretch.last) // 2]
+    aside = [
+        stretch
+        for stretch in stretches
+        if not covered[(stretch.first + stretch.last) // 2]
+        and run.along[stretch.last] - run.along[stretch.first] >= settings.copies_overlap
     ]
+    for stretch in aside:
+        rows = np.arange(stretch.first, stretch.last + 1)
+        state.left_alone += np.unique(draft.edges[np.concatenate((run.edge[rows], beside.edge[rows]))]).tolist()
+    return same, [_veins_finding(run, stretch) for stretch in aside]
+
+
+def _few(findings: tuple[Finding, ...]) -> tuple[Finding, ...]:
+    """The first findings, and one for the rest."""
+    rest = len(findings) - _LISTED
+    if rest <= 0:
+        return findings
+    more = Finding("overlapping veins", Severity.WARNING, f"{rest} pairs of overlapping veins more", value=float(rest))
+    return (*findings[:_LISTED], more)
+
+
+def _ends_left_alone(draft: Draft, state: Fusing) -> Draft:
+    """Mark open ends of doubled veins, so that no later step joins them."""
+    if not state.left_alone:
+        return draft
+    end_state = draft.end_state.copy()
+    nodes = np.array(state.left_alone)
+    end_state[nodes[state.degree[nodes] == 1]] = LEFT_ALONE
+    return replace(draft, end_state=end_state)
 
 
 def _in_veins(draft: Draft, run: Samples, beside: Beside, stretches: list[Stretch]) -> bool:
@@ -194,8 +225,8 @@ def _veins_finding(run: Samples, stretch: Stretch) -> Finding:
         "overlapping veins",
         Severity.WARNING,
         f"two veins lie within one another for {run.along[stretch.last] - run.along[stretch.first]:.3g} radii, "
-        f"{stretch.mean_distance:.2g} of the radius apart on average; left as drawn, since doubled veins are real: "
-        "both carry flow in the model",
+        f"{stretch.mean_distance:.2g} of the radius apart on average; left as drawn, with open ends "
+        "not joined, since doubled veins are real",
         position=(x, y, z),
         value=stretch.mean_distance,
     )

@@ -8,9 +8,22 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 
-from geomprep.model import BoolArray, FloatArray, IntArray, Uint8Array, degrees
+from geomprep.model import FloatArray, IntArray, Uint8Array, degrees
 
-__all__ = ["Draft", "compacted", "degree", "lengths", "merged", "point_radius", "without_edges"]
+__all__ = [
+    "JOINED_ENDS",
+    "LEFT_ALONE",
+    "Draft",
+    "compacted",
+    "degree",
+    "lengths",
+    "merged",
+    "point_radius",
+    "without_edges",
+]
+
+
+JOINED_ENDS, LEFT_ALONE = 1, 2
 
 
 @dataclass(frozen=True, eq=False)
@@ -29,8 +42,9 @@ class Draft:
         Radius that the line stated at both ends of each edge.
     edge_class : (e,) uint8 array
         Vessel class of the line.
-    was_end : (n,) bool array
-        Points made of open ends; they may still lie on the side of another line.
+    end_state : (n,) uint8 array
+        :data:`JOINED_ENDS` where open ends were joined, which may still lie on the side of a
+        line; :data:`LEFT_ALONE` for ends that no step may join before a person decides.
     merged_into : (n_raw,) int array
         Point that each raw point ended in, :data:`PointGraph.UNUSED` where no line uses it.
     raw_points : (n_raw, 3) array
@@ -44,7 +58,7 @@ class Draft:
     edges: IntArray
     end_radius: FloatArray
     edge_class: Uint8Array
-    was_end: BoolArray
+    end_state: Uint8Array
     merged_into: IntArray
     raw_points: npt.NDArray[Any]
 
@@ -98,7 +112,7 @@ def merged(draft: Draft, label: IntArray, keeps_place: npt.NDArray[np.bool_] | N
         input_id=draft.input_id[first],
         radius_basis=draft.radius_basis[first],
         source_point=draft.source_point[first],
-        was_end=draft.was_end[first],
+        end_state=draft.end_state[first],
         edges=label[draft.edges],
         merged_into=_relabelled(draft.merged_into, label),
     )
@@ -135,7 +149,7 @@ def _settle(draft: Draft, new: Draft, several: IntArray, label: IntArray) -> Non
     new.source_point[target] = draft.source_point[leader]
     new.input_id[target] = draft.input_id[leader]
     new.vessel_class[target] = np.maximum.reduceat(draft.vessel_class[ordered], starts)
-    new.was_end[target] = np.logical_or.reduceat(draft.was_end[ordered], starts)
+    new.end_state[target] = np.maximum.reduceat(draft.end_state[ordered], starts)
     new.radius_basis[target] = np.maximum.reduceat(draft.radius_basis[ordered], starts)
 
 
@@ -182,7 +196,7 @@ def compacted(draft: Draft) -> tuple[Draft, IntArray]:
             input_id=draft.input_id[order],
             radius_basis=draft.radius_basis[order],
             source_point=draft.source_point[order],
-            was_end=draft.was_end[order],
+            end_state=draft.end_state[order],
             edges=number[draft.edges],
             merged_into=followed,
         ),

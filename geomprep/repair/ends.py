@@ -10,7 +10,7 @@ from geomprep.curves import piece_integrals
 from geomprep.model import BoolArray, FloatArray, IntArray, Repair, anchor_ids
 from geomprep.repair.classes import may_join
 from geomprep.repair.coincident import group_pairs, near_pairs
-from geomprep.repair.draft import Draft, degree, lengths, merged, point_radius
+from geomprep.repair.draft import JOINED_ENDS, LEFT_ALONE, Draft, degree, lengths, merged, point_radius
 from geomprep.repair.runs import Runs
 
 __all__ = ["join_near_open_ends", "run_conductance", "runs_at_ends"]
@@ -37,7 +37,7 @@ def join_near_open_ends(draft: Draft, laid: Runs, within: float) -> tuple[Draft,
         One per group of points that became one.
     """
     ends = degree(draft)
-    node = np.flatnonzero((ends != 2) & (ends > 0))
+    node = np.flatnonzero((ends != 2) & (ends > 0) & (draft.end_state != LEFT_ALONE))
     radius = point_radius(draft)
     pairs = near_pairs(draft.points[node], radius[node], within)
     one, other = node[pairs[:, 0]], node[pairs[:, 1]]
@@ -57,9 +57,9 @@ def join_near_open_ends(draft: Draft, laid: Runs, within: float) -> tuple[Draft,
     junctions = np.bincount(label[ends > 2], minlength=len(label))
     keeps = (ends > 2) | (junctions[label] == 0)  # a junction stays in its place
     _, label = np.unique(label, return_inverse=True)
-    was_end = draft.was_end.copy()
-    was_end[joined] = True
-    return merged(replace(draft, was_end=was_end), label, keeps), repairs
+    end_state = draft.end_state.copy()
+    end_state[joined] = JOINED_ENDS
+    return merged(replace(draft, end_state=end_state), label, keeps), repairs
 
 
 def _short_run_between(draft: Draft, laid: Runs, one: IntArray, other: IntArray) -> BoolArray:
@@ -86,8 +86,9 @@ def runs_at_ends(draft: Draft, laid: Runs) -> tuple[IntArray, FloatArray]:
     """
     run = np.full(len(draft.points), -1, np.int64)
     along = np.zeros(len(draft.points))
-    if draft.was_end.any():
-        edge = np.flatnonzero(draft.was_end[draft.edges[:, 0]])
+    joined = draft.end_state == JOINED_ENDS
+    if joined.any():
+        edge = np.flatnonzero(joined[draft.edges[:, 0]])
         run[draft.edges[edge, 0]], along[draft.edges[edge, 0]] = laid.of_edge[edge], laid.along[edge]
     numbers = np.arange(len(laid.offsets) - 1)
     first, last = draft.edges[laid.offsets[:-1], 0], draft.edges[laid.offsets[1:] - 1, 1]

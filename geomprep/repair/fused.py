@@ -73,6 +73,7 @@ class Fusing:
         self.gone = np.zeros(len(draft.edges), np.bool_)
         self.on_kept = np.zeros(len(draft.points), np.bool_)
         self.degree = degree(draft)
+        self.left_alone: list[int] = []  # points of doubled veins
         self.absorbed: list[Absorbed] = []
         self.new_edge: list[int] = []  # edge and fraction at which each new point lies
         self.new_part: list[float] = []

@@ -29,7 +29,7 @@ def with_new_points(draft: Draft, points: FloatArray, edge: IntArray) -> Draft:
         vessel_class=np.concatenate((draft.vessel_class, draft.edge_class[edge])),
         input_id=np.concatenate((draft.input_id, draft.input_id[near])),
         radius_basis=np.concatenate((draft.radius_basis, np.full(len(edge), Basis.INTERPOLATED, np.uint8))),
-        was_end=np.concatenate((draft.was_end, np.zeros(len(edge), np.bool_))),
+        end_state=np.concatenate((draft.end_state, np.zeros(len(edge), np.uint8))),
         source_point=np.concatenate((draft.source_point, np.full(len(edge), -1, np.int64))),
     )
 

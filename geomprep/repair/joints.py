@@ -8,7 +8,7 @@ import numpy as np
 
 from geomprep.model import BoolArray, FloatArray, IntArray, Repair, anchor_ids
 from geomprep.repair.classes import may_join
-from geomprep.repair.draft import Draft, degree, merged, without_edges
+from geomprep.repair.draft import JOINED_ENDS, LEFT_ALONE, Draft, degree, merged, without_edges
 from geomprep.repair.ends import run_conductance, runs_at_ends
 from geomprep.repair.insert import with_new_points, with_split_edges
 from geomprep.repair.overlaps import Layout
@@ -121,8 +121,9 @@ def _contacts(draft: Draft, layout: Layout, settings: JoinSettings) -> _Contacts
     """Ends within reach of the side of a line, each with the nearest place."""
     marks, laid = layout.marks, layout.runs
     ends = degree(draft)
-    node = np.flatnonzero((ends > 0) & ((ends != 2) | draft.was_end))
-    within = np.where((ends[node] == 1) | draft.was_end[node], settings.joints_within, settings.tolerance)
+    was_end = draft.end_state == JOINED_ENDS
+    node = np.flatnonzero((ends > 0) & ((ends != 2) | was_end) & (draft.end_state != LEFT_ALONE))
+    within = np.where((ends[node] == 1) | was_end[node], settings.joints_within, settings.tolerance)
     node, within = node[within > 0], within[within > 0]
     found = [_EMPTY]
     for near_row, near_mark in layout.near(draft.points[node], 1.0 + settings.joints_within):

@@ -48,7 +48,7 @@ def started(centrelines: Centrelines) -> tuple[Draft, tuple[Finding, ...]]:
         input_id=input_of[keep],
         radius_basis=_worst_basis(centrelines, used.raw, label, keep),
         source_point=keep,
-        was_end=np.zeros(len(keep), np.bool_),
+        end_state=np.zeros(len(keep), np.uint8),
         edges=label[used.edges],
         end_radius=_stated_radius(centrelines, edges, line),
         edge_class=edge_class,

@@ -154,7 +154,7 @@ def test_veins_are_fused_only_within_the_tolerance(lines: Lines) -> None:
     exact = join(lines([one, other], 1.0, classes=[2, 2]))
     assert [repair.kind for repair in exact.repairs] == ["fused copies"]
     assert junction_degrees(exact.graph) == {1: 2}
-    beside = join(lines([one, other + np.array([0.04, 0, 0])], 1.0, classes=[2, 2]), JoinSettings(joints_within=0))
+    beside = join(lines([one, other + np.array([0.04, 0, 0])], 1.0, classes=[2, 2]))
     assert beside.repairs == ()
     assert junction_degrees(beside.graph) == {1: 4}
     assert [finding.kind for finding in beside.findings] == ["overlapping veins", "isolated part"]
@@ -204,3 +204,23 @@ def test_two_tracks_that_share_only_their_middle(lines: Lines) -> None:
     assert junction_degrees(result.graph) == {3: 2, 1: 4}
     (repair,) = result.repairs
     assert "(30 radii)" in repair.reason
+
+
+def test_doubled_vein_left_to_a_person_is_not_joined_at_its_ends(lines: Lines) -> None:
+    """A copy 0.06 radii beside a part of a vein: undecided, so drawn as it came, and said to be cut off."""
+    one = np.linspace(0, 40, 41)[:, None] * [0, 0, 1.0]
+    copy = np.linspace(10.2, 30.2, 34)[:, None] * [0, 0, 1.0] + np.array([0.06, 0, 0])
+    result = join(lines([one, copy], 1.0, classes=[2, 2]))
+    assert junction_degrees(result.graph) == {1: 4}
+    assert result.repairs == ()
+    assert [finding.kind for finding in result.findings] == ["overlapping veins", "isolated part"]
+    arteries = join(lines([one, copy], 1.0))
+    assert junction_degrees(arteries.graph) == {1: 2}
+
+
+def test_vein_that_overlaps_its_continuation_by_one_radius_joins_it(lines: Lines) -> None:
+    one = np.linspace(0, 20, 21)[:, None] * [0, 0, 1.0]
+    other = np.linspace(19.1, 45, 27)[:, None] * [0, 0, 1.0] + np.array([0.05, 0, 0])
+    result = join(lines([one, other], 1.0, classes=[2, 2]))
+    assert junction_degrees(result.graph) == {1: 2}
+    assert [repair.kind for repair in result.repairs] == ["T-joint"]
