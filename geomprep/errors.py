@@ -86,6 +86,11 @@ class Question:
     candidates: tuple[str, ...] = ()
     evidence: tuple[str, ...] = ()
 
+    def oneline(self) -> str:
+        """Return question, candidates and the key to set, on one line."""
+        choices = f"; candidates: {', '.join(self.candidates)}" if self.candidates else ""
+        return f"{self.text}{choices}; set {self.key}"
+
 
 class OpenQuestions(InputError):
     """The case leaves questions open; all of them are listed at once, numbered."""
@@ -93,9 +98,6 @@ class OpenQuestions(InputError):
     def __init__(self, questions: Sequence[Question]) -> None:
         self.questions = tuple(questions)
         listed = "; ".join(
-            f"({number}) {question.text}"
-            + (f" Candidates: {', '.join(question.candidates)}." if question.candidates else "")
-            + f" Set {question.key}."
-            for number, question in enumerate(self.questions, 1)
+            f"({number}) {question.oneline()}" for number, question in enumerate(self.questions, 1)
         )
         super().__init__(f"the case leaves {len(self.questions)} question(s) open: {listed}")

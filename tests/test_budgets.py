@@ -30,6 +30,7 @@ def test_sizes(path: Path) -> None:
 def test_everything_public_is_described(path: Path) -> None:
     tree = ast.parse(path.read_text(encoding="utf-8"))
     assert ast.get_docstring(tree), f"{path.name} has no docstring"
-    for node in ast.walk(tree):
+    holders = [tree, *(node for node in ast.walk(tree) if isinstance(node, ast.ClassDef))]
+    for node in (inner for holder in holders for inner in holder.body):
         if isinstance(node, ast.FunctionDef | ast.ClassDef) and not node.name.startswith("__"):
             assert ast.get_docstring(node), f"{node.name} has no docstring"

@@ -66,7 +66,7 @@ def _cover_faults(row: Field, filled: Any, entries: list[dict[str, Any]]) -> Ite
                 yield Fault("basis", "basis.fields", message)
                 return
             count[first : last + 1] += 1
-    general = sum(not entry["rows"] for entry in entries)
+    general = sum(len(entry["rows"]) == 0 for entry in entries)
     if general > 1 or np.any(count > 1):
         yield Fault("basis", "basis.fields", f"{row.path} has more than one basis for the same row")
     bare = filled & (count == 0)
