@@ -2,15 +2,11 @@
 
 from __future__ import annotations
 
-import dataclasses
 import importlib.util
-import json
 from collections.abc import Callable
 from pathlib import Path
 from types import SimpleNamespace
-from typing import Any
 
-import numpy as np
 import pytest
 
 from geomprep.export import write_network
