@@ -155,9 +155,11 @@ def _beside(state: Fusing, forest: Forest, samples: Samples, run: Samples) -> Be
     edge, row = np.take_along_axis(edge, best, 1)[:, 0], np.take_along_axis(row, best, 1)[:, 0]
     part, distance = np.take_along_axis(part, best, 1)[:, 0], np.take_along_axis(distance, best, 1)[:, 0]
     radius = between(state.end_radius, edge, part)
+    first, last = state.points[state.edges[edge, 0]], state.points[state.edges[edge, 1]]
     return Beside(
         edge,
         part,
+        first + part[:, None] * (last - first),
         distance / np.minimum(radius, run.radius),
         np.abs(np.einsum("ij,ij->i", run.tangent, samples.tangent[row])),
         np.maximum(radius, run.radius) / np.minimum(radius, run.radius),

@@ -14,11 +14,11 @@ from geomprep.repair.classes import class_findings
 from geomprep.repair.coincident import join_near_ends
 from geomprep.repair.copies import fuse_copies
 from geomprep.repair.doubled import single_edges
-from geomprep.repair.draft import Draft, compacted
+from geomprep.repair.draft import Draft, compacted, lengths, merged
 from geomprep.repair.ends import join_near_open_ends
 from geomprep.repair.joints import join_sides
 from geomprep.repair.overlaps import Layout
-from geomprep.repair.parts import isolated_parts
+from geomprep.repair.parts import components, isolated_parts
 from geomprep.repair.radii import settled_radii
 from geomprep.repair.runs import laid_in_runs
 from geomprep.repair.settings import JoinSettings
@@ -124,6 +124,10 @@ def _nearby(
 
 def _settled(draft: Draft, repairs: tuple[Repair, ...], settings: JoinSettings) -> tuple[Draft, tuple[Repair, ...]]:
     """Single edges, laid in runs, and no points without edges, after a step has changed the draft."""
+    short = lengths(draft) == 0.0
+    if short.any():  # points that a step has moved to one place
+        _, label = components(len(draft.points), draft.edges[short])
+        draft = merged(draft, label)
     single, _ = single_edges(draft, settings.radii_agree_within)
     return _compacted(laid_in_runs(single), repairs)
 

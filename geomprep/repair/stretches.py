@@ -62,6 +62,7 @@ class Beside:
     ----------
     edge : (k,) int array
     part : (k,) float array
+    place : (k, 3) float array
     distance : (k,) float array
         In parts of the smaller radius of the two.
     cosine : (k,) float array
@@ -72,6 +73,7 @@ class Beside:
 
     edge: IntArray
     part: FloatArray
+    place: FloatArray
     distance: FloatArray
     cosine: FloatArray
     ratio: FloatArray
@@ -223,7 +225,9 @@ def _is_copy(
         return False
     if run.along[inner[-1]] - run.along[inner[0]] < _CLOSE_PART * length:
         return False
-    return bool(np.mean(beside.cosine[inner]) >= _COS_APART)
+    # the places beside a copy move along with it; those beside a stub at the end of a vessel do not
+    ways = [np.linalg.norm(np.diff(line[first : last + 1], axis=0), axis=1).sum() for line in (run.point, beside.place)]
+    return bool(ways[1] >= 0.5 * ways[0] and np.mean(beside.cosine[inner]) >= _COS_APART)
 
 
 def _parting(along: FloatArray, distance: FloatArray, close: int, weak: int, side: int, open_end: bool) -> int:
