@@ -7,7 +7,7 @@ from dataclasses import replace
 import numpy as np
 
 from geomprep.curves import piece_integrals
-from geomprep.model import BoolArray, FloatArray, IntArray, Repair, anchor_ids
+from geomprep.model import BoolArray, FloatArray, IntArray, Repair, anchor_ids, raw_order
 from geomprep.repair.classes import may_join
 from geomprep.repair.coincident import group_pairs, near_pairs
 from geomprep.repair.draft import JOINED_ENDS, LEFT_ALONE, Draft, degree, lengths, merged, point_radius
@@ -53,6 +53,8 @@ def join_near_open_ends(draft: Draft, laid: Runs, within: float) -> tuple[Draft,
     joined = np.flatnonzero(np.bincount(label, minlength=len(label))[label] > 1)
     joined = joined[np.argsort(label[joined], kind="stable")]
     groups = np.split(joined, np.flatnonzero(np.diff(label[joined])) + 1)
+    first = np.array([min(draft.raw_points[np.maximum(draft.source_point[group], 0)].tolist()) for group in groups])
+    groups = [groups[row] for row in raw_order(first, np.arange(len(groups)))]
     repairs = _records(draft, groups, radius, _branch_conductance(draft, laid))
     junctions = np.bincount(label[ends > 2], minlength=len(label))
     keeps = (ends > 2) | (junctions[label] == 0)  # a junction stays in its place

@@ -47,9 +47,11 @@ class JoinResult:
 def join(centrelines: Centrelines, settings: JoinSettings | None = None) -> JoinResult:
     """Join lines into one graph of points and edges, within each vessel class.
 
-    Points at identical coordinates are one point; ends that nearly coincide merge;
-    an edge drawn several times counts once. Arteries join arteries and veins join
-    veins; lines of unknown class join any, with a finding.
+    In this order: points at identical coordinates are one point; ends that nearly
+    coincide merge; an edge drawn several times counts once; runs that are copies of one
+    vessel, each sampled in its own way, are fused; open ends join ends and sides of
+    lines that they lie on. Arteries join arteries and veins join veins; lines of unknown
+    class join any, with a finding.
 
     Parameters
     ----------

@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from geomprep.model import BoolArray, FloatArray, IntArray, Repair, anchor_ids
+from geomprep.model import BoolArray, FloatArray, IntArray, Repair, anchor_ids, raw_order
 from geomprep.repair.classes import may_join
 from geomprep.repair.draft import JOINED_ENDS, LEFT_ALONE, Draft, degree, merged, without_edges
 from geomprep.repair.ends import run_conductance, runs_at_ends
@@ -76,6 +76,7 @@ def join_sides(draft: Draft, layout: Layout, settings: JoinSettings) -> tuple[Dr
     if len(contacts.node) == 0:
         return draft, ()
     contacts, facing = _without_facing(draft, layout, contacts)
+    contacts = contacts[raw_order(draft.raw_points, np.maximum(draft.source_point[contacts.node], 0))]
     repairs = _records(draft, layout, contacts)
     contacts, inside = _followed_inside(draft, layout, contacts, settings.joints_within)
     gone = np.concatenate((facing.gone, inside.gone))

@@ -97,7 +97,7 @@ def test_order_and_direction_of_lines_do_not_matter(lines: Lines, drawing: Drawi
     other = join(lines([places[k][:: turn[k]] for k in rows], [radii[k][:: turn[k]] for k in rows]))
     same(network(one), network(other))
     # ids hang on raw coordinates, which have not changed
-    assert sorted(repair.id for repair in one.repairs) == sorted(repair.id for repair in other.repairs)
+    assert [repair.id for repair in one.repairs] == [repair.id for repair in other.repairs]
     assert anchors(one.graph) == anchors(other.graph)
 
 
@@ -160,7 +160,18 @@ def test_jittered_copies_do_not_depend_on_order_or_direction(trees: SimpleNamesp
     one = join(lines(places, radii))
     other = join(lines([places[k][:: turn[k]] for k in rows], [radii[k][:: turn[k]] for k in rows]))
     same(network(one), network(other))
-    assert sorted(repair.id for repair in one.repairs) == sorted(repair.id for repair in other.repairs)
+    assert [repair.id for repair in one.repairs] == [repair.id for repair in other.repairs]
+
+
+@pytest.mark.parametrize("seed", range(3))
+def test_jittered_copies_do_not_depend_on_place_or_on_splits(trees: SimpleNamespace, lines: Lines, seed: int) -> None:
+    places, radii = trees.sampled_tracks(trees.binary(3, seed), 0.05, seed)
+    one = network(join(lines(places, radii)))
+    turn = Rotation.random(rng=np.random.default_rng(seed)).as_matrix()
+    same(one, network(join(lines([line @ turn.T + [1.0, -2.0, 3.0] for line in places], radii))), rel=1e-7)
+    halves = [half for line in places for half in (line[: len(line) // 3 + 1], line[len(line) // 3 :])]
+    sizes = [half for size in radii for half in (size[: len(size) // 3 + 1], size[len(size) // 3 :])]
+    same(one, network(join(lines(halves, sizes))))
 
 
 @pytest.mark.parametrize("seed", range(3))
@@ -183,6 +194,9 @@ def test_every_raw_point_is_accounted_for(lines: Lines, drawing: Drawing) -> Non
     assert ((graph.merged_into >= 0) & (graph.merged_into < graph.n_points)).all()
     known = graph.source_point >= 0
     assert (graph.merged_into[graph.source_point[known]] == np.flatnonzero(known)).all()
+    for point in np.flatnonzero(known):  # the raw point whose coordinates come first stands for all that merged
+        members = graph.raw_points[graph.merged_into == point]
+        assert tuple(graph.raw_points[graph.source_point[point]]) == min(map(tuple, members))
     step = np.linalg.norm(np.diff(graph.points[graph.edges], axis=1)[:, 0], axis=1)
     assert step.min() > 1e-4
     assert (degrees(graph.n_points, graph.edges) > 0).all()
