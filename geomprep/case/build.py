@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from geomprep import __version__
+from geomprep.case.decisions import read_decisions
 from geomprep.case.file import read_case
 from geomprep.case.geometry import Drawn, draw_network
 from geomprep.case.parameters import Assigned, assign_parameters
@@ -151,6 +152,7 @@ def _context(case: Case, drawn: Drawn, assigned: Assigned, findings: tuple[Findi
         case_sha256=case.sha256,
         findings=findings,
         repairs=drawn.repairs,
+        decisions=read_decisions(case.folder),
         sources=_sources(assigned.network.origins, findings),
         steps=_STEPS,
     )

@@ -11,6 +11,7 @@ import numpy.typing as npt
 
 from geomprep.anatomy import NamedPoint, name_segments, read_names
 from geomprep.assign import Ends, resolve_ends
+from geomprep.case.decisions import read_decisions, standing
 from geomprep.case.sections import Case
 from geomprep.errors import CaseError, OpenQuestions, Question
 from geomprep.export import InputRecord
@@ -19,7 +20,7 @@ from geomprep.files.meaning import to_centrelines
 from geomprep.findings import Finding
 from geomprep.measure import junctions, measure_segments
 from geomprep.model import Centrelines, Network, Repair, concatenate
-from geomprep.repair import JoinResult, JoinSettings, join
+from geomprep.repair import PERSON, JoinResult, JoinSettings, Verdict, Verdicts, join
 from geomprep.segments import leave_out_unreached, order_segments, orient, resample, split
 from geomprep.units import length_factor
 
@@ -100,13 +101,23 @@ def draw_network(case: Case, progress: Progress) -> Drawn:
 
 def _cut(case: Case, progress: Progress) -> _Cut:
     """Join the lines of all files and cut the graph into segments."""
-    joined, records, seen = _joined(case, progress)
+    verdicts = recorded_verdicts(case)
+    joined, records, seen = _joined(case, verdicts, progress)
     progress("split", 0.5)
     network = _resampled(case, split(joined.graph))
-    return _Cut(network, joined.graph.raw_points, records, (*seen, *joined.findings), joined.repairs)
+    unknown = verdicts.unknown(repair.id for repair in joined.repairs)
+    return _Cut(network, joined.graph.raw_points, records, (*seen, *joined.findings, *unknown), joined.repairs)
 
 
-def _joined(case: Case, progress: Progress) -> tuple[JoinResult, tuple[InputRecord, ...], tuple[Finding, ...]]:
+def recorded_verdicts(case: Case) -> Verdicts:
+    """Decisions that stand beside a case, as verdicts."""
+    found = standing(read_decisions(case.folder))
+    return Verdicts({key: Verdict(decision.choice, PERSON) for key, decision in found.items()})
+
+
+def _joined(
+    case: Case, verdicts: Verdicts, progress: Progress
+) -> tuple[JoinResult, tuple[InputRecord, ...], tuple[Finding, ...]]:
     """Read all files of a case, give their numbers a meaning, join their lines."""
     progress("read", 0.05)
     contents = read_files([case.folder / statement.file for statement in case.inputs])
@@ -114,7 +125,7 @@ def _joined(case: Case, progress: Progress) -> tuple[JoinResult, tuple[InputReco
     centrelines, findings = _centrelines(case, contents)
     del contents
     progress("join", 0.3)
-    return join(centrelines, join_settings(case)), records, findings
+    return join(centrelines, join_settings(case), verdicts), records, findings
 
 
 def _centrelines(case: Case, contents: list[FileContents]) -> tuple[Centrelines, tuple[Finding, ...]]:

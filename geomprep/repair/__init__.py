@@ -2,5 +2,20 @@
 
 from geomprep.repair.join import JoinResult, join
 from geomprep.repair.settings import JoinSettings
+from geomprep.repair.steps import Step, StepResult, run_steps
+from geomprep.repair.verdicts import OPEN, PERSON, RULE, Verdict, Verdicts, Zones
 
-__all__ = ["JoinResult", "JoinSettings", "join"]
+__all__ = [
+    "OPEN",
+    "PERSON",
+    "RULE",
+    "JoinResult",
+    "JoinSettings",
+    "Step",
+    "StepResult",
+    "Verdict",
+    "Verdicts",
+    "Zones",
+    "join",
+    "run_steps",
+]

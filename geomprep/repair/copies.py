@@ -11,11 +11,12 @@ from geomprep.findings import Finding, Severity
 from geomprep.model import FloatArray, IntArray, Repair, anchor_ids, raw_order
 from geomprep.repair.classes import VEIN, may_join
 from geomprep.repair.draft import LEFT_ALONE, Draft
-from geomprep.repair.fused import Absorbed, Fusing, averaged, fused_draft
+from geomprep.repair.fused import Absorbed, Fusing, averaged, fused_draft, line_anchors
 from geomprep.repair.overlaps import Layout, overlapping_runs
 from geomprep.repair.runs import Runs, between, nearest_part, places_on
 from geomprep.repair.settings import JoinSettings
 from geomprep.repair.stretches import Beside, Forest, Limits, Samples, Stretch, copied_stretches
+from geomprep.repair.verdicts import Verdicts, settled
 
 __all__ = ["fuse_copies"]
 
@@ -28,12 +29,13 @@ _REACH = 6.0
 """Radii beyond which nothing is looked for: distances above 3 radii all count the same."""
 _PAIR = 2.0
 """Two lines within x of a common middle line are within 2 x of one another."""
+_OPTIONS = ("fuse", "leave")
 _WEAK = 3.0
 """Single samples may lie this many times further apart than the average."""
 
 
 def fuse_copies(
-    draft: Draft, layout: Layout, settings: JoinSettings
+    draft: Draft, layout: Layout, settings: JoinSettings, verdicts: Verdicts
 ) -> tuple[Draft, tuple[Repair, ...], tuple[Finding, ...]]:
     """Fuse runs that are copies of one vessel.
 
@@ -48,13 +50,15 @@ def fuse_copies(
         Edges laid in runs.
     layout : Layout
     settings : JoinSettings
+    verdicts : Verdicts
+        Recorded choices; one on a line holds for all its stretches.
 
     Returns
     -------
     Draft
         The same object where nothing was fused.
     repairs : tuple of Repair
-        One per absorbed stretch.
+        One per absorbed stretch, and per line that a person left.
     findings : tuple of Finding
         Veins left side by side.
     """
@@ -66,14 +70,15 @@ def fuse_copies(
         return draft, (), ()
     samples, rows = _sampled(draft, layout.runs, which)
     order = _longest_first(draft, layout.runs, which)
-    state, findings = _absorbed_in_turn(draft, (samples, rows), order, settings)
+    state, left, findings = _absorbed_in_turn(draft, (samples, rows), order, (settings, verdicts))
     draft = state.draft = _ends_left_alone(draft, state)
     findings = _few(findings)
     if not state.absorbed:
-        return draft, (), findings
+        return draft, left, findings
     points, end_radius = averaged(state, 1.5 * apart)
     new = fused_draft(state, points, end_radius)
-    return new, _records(state, points, end_radius), (*findings, _summary(state))
+    records = settled(_records(state, points, end_radius), verdicts)
+    return new, (*records, *left), (*findings, _summary(state))
 
 
 def _sampled(draft: Draft, laid: Runs, which: IntArray) -> tuple[Samples, IntArray]:
@@ -112,10 +117,11 @@ def _longest_first(draft: Draft, laid: Runs, which: IntArray) -> list[int]:
 
 
 def _absorbed_in_turn(
-    draft: Draft, sampled: tuple[Samples, IntArray], order: list[int], settings: JoinSettings
-) -> tuple[Fusing, tuple[Finding, ...]]:
+    draft: Draft, sampled: tuple[Samples, IntArray], order: list[int], rules: tuple[JoinSettings, Verdicts]
+) -> tuple[Fusing, tuple[Repair, ...], tuple[Finding, ...]]:
     """Take runs into the kept network one by one, without what is a copy of it."""
-    samples, rows = sampled
+    (samples, rows), (settings, verdicts) = sampled, rules
+    left: list[Repair] = []
     state, forest = Fusing(draft, 4 * len(order) + 8), Forest()
     findings: list[Finding] = []
     for number in order:
@@ -126,6 +132,11 @@ def _absorbed_in_turn(
             beside = _beside(state, forest, samples, run)
             stretches, aside = _decided(draft, run, beside, state, settings)
             findings += aside
+            declined = _declined(draft, run, stretches, verdicts)
+            if declined is not None:
+                left.append(declined)
+                _leave_alone(state, run, beside, stretches)
+                stretches = []
             after = -1
             for stretch in stretches:
                 gone = state.absorb(run, beside, stretch, after)
@@ -135,7 +146,21 @@ def _absorbed_in_turn(
         stays &= ~state.gone[run.edge]
         state.keep(np.unique(run.edge[~state.gone[run.edge]]))
         forest.add(start + np.flatnonzero(stays), samples.point)
-    return state, tuple(findings)
+    return state, tuple(left), tuple(findings)
+
+
+def _declined(draft: Draft, run: Samples, stretches: list[Stretch], verdicts: Verdicts) -> Repair | None:
+    """The record of a line whose copies a person left as drawn."""
+    if not stretches or not verdicts.recorded:
+        return None
+    anchors = draft.source_point[line_anchors(draft, run)]
+    name = str(anchor_ids("fused-copies", draft.raw_points, anchors[None])[0])
+    verdict = verdicts.settle(name, _OPTIONS, "fuse")
+    if verdict.choice == "fuse":
+        return None
+    x, y, z = run.point[(stretches[0].first + stretches[0].last) // 2].tolist()
+    reason = f"a line runs along another on {len(stretches)} stretch(es); both are kept"
+    return Repair(name, "fused copies", reason, (x, y, z), verdict.choice, _OPTIONS, verdict.by)
 
 
 def _beside(state: Fusing, forest: Forest, samples: Samples, run: Samples) -> Beside:
@@ -188,10 +213,16 @@ def _decided(
         if not covered[(stretch.first + stretch.last) // 2]
         and run.along[stretch.last] - run.along[stretch.first] >= settings.copies_overlap
     ]
-    for stretch in aside:
-        rows = np.arange(stretch.first, stretch.last + 1)
-        state.left_alone += np.unique(draft.edges[np.concatenate((run.edge[rows], beside.edge[rows]))]).tolist()
+    _leave_alone(state, run, beside, aside)
     return same, [_veins_finding(run, stretch) for stretch in aside]
+
+
+def _leave_alone(state: Fusing, run: Samples, beside: Beside, stretches: list[Stretch]) -> None:
+    """Remember the points of both lines, so that no later step joins their open ends (in place)."""
+    for stretch in stretches:
+        rows = np.arange(stretch.first, stretch.last + 1)
+        edges = np.concatenate((run.edge[rows], beside.edge[rows]))
+        state.left_alone += np.unique(state.draft.edges[edges]).tolist()
 
 
 def _few(findings: tuple[Finding, ...]) -> tuple[Finding, ...]:
@@ -280,7 +311,7 @@ def _record(
         ),
         position=(x, y, z),
         choice="fuse",
-        options=("fuse", "leave"),
+        options=_OPTIONS,
         conductance_before=np.pi / 8.0 * (1.0 / own + 1.0 / beside),
         conductance_after=np.pi / 8.0 / fused,
         raw_points=raw,

@@ -12,6 +12,7 @@ from geomprep.repair.classes import may_join
 from geomprep.repair.coincident import group_pairs, near_pairs
 from geomprep.repair.draft import JOINED_ENDS, LEFT_ALONE, Draft, degree, lengths, merged, point_radius
 from geomprep.repair.runs import Runs
+from geomprep.repair.verdicts import Verdicts, settled
 
 __all__ = ["join_near_open_ends", "run_conductance", "runs_at_ends"]
 
@@ -19,7 +20,9 @@ _INSIDE = 2.0
 """A run shorter than this many radii is not closed to a ring."""
 
 
-def join_near_open_ends(draft: Draft, laid: Runs, within: float) -> tuple[Draft, tuple[Repair, ...]]:
+def join_near_open_ends(
+    draft: Draft, laid: Runs, within: float, verdicts: Verdicts
+) -> tuple[Draft, tuple[Repair, ...]]:
     """Merge open ends with ends and junctions that lie within a part of the radius.
 
     Parameters
@@ -28,13 +31,15 @@ def join_near_open_ends(draft: Draft, laid: Runs, within: float) -> tuple[Draft,
     laid : Runs
     within : float
         Largest distance as a part of the smaller radius.
+    verdicts : Verdicts
+        Recorded choices on the groups.
 
     Returns
     -------
     Draft
         The same object where nothing was near.
     repairs : tuple of Repair
-        One per group of points that became one.
+        One per group of points that became one, or that a person left apart.
     """
     ends = degree(draft)
     node = np.flatnonzero((ends != 2) & (ends > 0) & (draft.end_state != LEFT_ALONE))
@@ -55,7 +60,17 @@ def join_near_open_ends(draft: Draft, laid: Runs, within: float) -> tuple[Draft,
     groups = np.split(joined, np.flatnonzero(np.diff(label[joined])) + 1)
     first = np.array([min(draft.raw_points[np.maximum(draft.source_point[group], 0)].tolist()) for group in groups])
     groups = [groups[row] for row in raw_order(first, np.arange(len(groups)))]
-    repairs = _records(draft, groups, radius, _branch_conductance(draft, laid))
+    repairs = settled(_records(draft, groups, radius, _branch_conductance(draft, laid)), verdicts)
+    apart = [group for repair, group in zip(repairs, groups, strict=True) if repair.choice != "join"]
+    if apart:
+        left = np.concatenate(apart)
+        label[left] = left
+        joined = np.setdiff1d(joined, left)
+        end_state = draft.end_state.copy()
+        end_state[left] = LEFT_ALONE
+        draft = replace(draft, end_state=end_state)
+    if len(joined) == 0:
+        return draft, repairs
     junctions = np.bincount(label[ends > 2], minlength=len(label))
     keeps = (ends > 2) | (junctions[label] == 0)  # a junction stays in its place
     _, label = np.unique(label, return_inverse=True)

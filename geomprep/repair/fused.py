@@ -13,7 +13,7 @@ from geomprep.repair.insert import with_new_points, with_split_edges
 from geomprep.repair.runs import between, foot
 from geomprep.repair.stretches import Beside, Samples, Stretch
 
-__all__ = ["Absorbed", "Fusing", "averaged", "fused_draft"]
+__all__ = ["Absorbed", "Fusing", "averaged", "fused_draft", "line_anchors"]
 
 _SAME_JUNCTION = 1.0
 """Radii within which two places where copies part are one junction."""
@@ -135,8 +135,7 @@ class Fusing:
             self._tie(run, beside, stretch.last, (last + 1, 0), nodes[-1:])
         self.gone[first : last + 1] = True
         taken = slice(stretch.first, stretch.last + 1)
-        whole = np.append(self.draft.edges[low : high + 1, 0], self.draft.edges[high, 1])
-        line = whole[[0, (len(whole) - 1) // 2, len(whole) // 2, -1]]
+        line = line_anchors(self.draft, run)
         self.absorbed.append(Absorbed(stretch, run[taken], beside.edge[taken], beside.part[taken], nodes, line))
         return first, last
 
@@ -160,6 +159,13 @@ class Fusing:
         else:
             self.goes_on.append((np.array([end]), beside.edge[row : row + 1], beside.part[row : row + 1]))
         return np.array([end])
+
+
+def line_anchors(draft: Draft, run: Samples) -> IntArray:
+    """Ends and middle points of the whole line of a run: what its id hangs on, (4,)."""
+    low, high = int(run.edge[0]), int(run.edge[-1])
+    whole = np.append(draft.edges[low : high + 1, 0], draft.edges[high, 1])
+    return whole[[0, (len(whole) - 1) // 2, len(whole) // 2, -1]]
 
 
 def _last_kept(run: Samples, row: int) -> int | None:

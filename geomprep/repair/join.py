@@ -23,6 +23,7 @@ from geomprep.repair.radii import settled_radii
 from geomprep.repair.runs import laid_in_runs
 from geomprep.repair.settings import JoinSettings
 from geomprep.repair.start import started
+from geomprep.repair.verdicts import Verdicts
 
 __all__ = ["JoinResult", "join"]
 
@@ -44,7 +45,9 @@ class JoinResult:
     findings: tuple[Finding, ...]
 
 
-def join(centrelines: Centrelines, settings: JoinSettings | None = None) -> JoinResult:
+def join(
+    centrelines: Centrelines, settings: JoinSettings | None = None, verdicts: Verdicts | None = None
+) -> JoinResult:
     """Join lines into one graph of points and edges, within each vessel class.
 
     In this order: points at identical coordinates are one point; ends that nearly
@@ -59,6 +62,8 @@ def join(centrelines: Centrelines, settings: JoinSettings | None = None) -> Join
         Lines through points with radii, in SI.
     settings : JoinSettings, optional
         Limits in parts of the local radius.
+    verdicts : Verdicts, optional
+        Recorded choices, which go before the limits.
 
     Returns
     -------
@@ -85,7 +90,7 @@ def join(centrelines: Centrelines, settings: JoinSettings | None = None) -> Join
     draft, found = _coincident(draft, settings)
     findings += found
     draft, repairs = _compacted(laid_in_runs(draft), ())
-    draft, repairs, found = _nearby(draft, repairs, settings)
+    draft, repairs, found = _nearby(draft, repairs, settings, verdicts or Verdicts())
     findings += found
     graph, radius_findings = _finished(draft)
     findings += radius_findings
@@ -106,21 +111,24 @@ def _coincident(draft: Draft, settings: JoinSettings) -> tuple[Draft, tuple[Find
 
 
 def _nearby(
-    draft: Draft, repairs: tuple[Repair, ...], settings: JoinSettings
+    draft: Draft, repairs: tuple[Repair, ...], settings: JoinSettings, verdicts: Verdicts
 ) -> tuple[Draft, tuple[Repair, ...], tuple[Finding, ...]]:
     """Fuse copies of trunks, then join open ends to ends and to sides within a part of the radius."""
     layout = Layout.of(draft)
-    fused, more, findings = fuse_copies(draft, layout, settings)
+    fused, more, findings = fuse_copies(draft, layout, settings, verdicts)
+    repairs += more
     if fused is not draft:
-        draft, repairs = _settled(fused, repairs + more, settings)
+        draft, repairs = _settled(fused, repairs, settings)
         layout = Layout.of(draft)
-    joined, more = join_near_open_ends(draft, layout.runs, settings.joints_within)
+    joined, more = join_near_open_ends(draft, layout.runs, settings.joints_within, verdicts)
+    repairs += more
     if joined is not draft:
-        draft, repairs = _settled(joined, repairs + more, settings)
+        draft, repairs = _settled(joined, repairs, settings)
         layout = Layout.of(draft)
-    joined, more = join_sides(draft, layout, settings)
+    joined, more = join_sides(draft, layout, settings, verdicts)
+    repairs += more
     if joined is not draft:
-        draft, repairs = _settled(joined, repairs + more, settings)
+        draft, repairs = _settled(joined, repairs, settings)
     return draft, repairs, findings
 
 

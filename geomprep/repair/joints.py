@@ -15,6 +15,7 @@ from geomprep.repair.overlaps import Layout
 from geomprep.repair.parts import components
 from geomprep.repair.runs import between, nearest_on, places_on
 from geomprep.repair.settings import JoinSettings
+from geomprep.repair.verdicts import Verdicts, settled
 
 __all__ = ["join_sides"]
 
@@ -50,7 +51,9 @@ class _Contacts:
         return _Contacts(self.node[which], self.edge[which], self.part[which], self.distance[which])
 
 
-def join_sides(draft: Draft, layout: Layout, settings: JoinSettings) -> tuple[Draft, tuple[Repair, ...]]:
+def join_sides(
+    draft: Draft, layout: Layout, settings: JoinSettings, verdicts: Verdicts
+) -> tuple[Draft, tuple[Repair, ...]]:
     """Join line ends to the side of the line that they lie on.
 
     An open end within `joints_within` of the local radius of another line, or a
@@ -64,20 +67,25 @@ def join_sides(draft: Draft, layout: Layout, settings: JoinSettings) -> tuple[Dr
         Edges laid in runs.
     layout : Layout
     settings : JoinSettings
+    verdicts : Verdicts
+        Recorded choices on the joints.
 
     Returns
     -------
     Draft
         The same object where nothing was near.
     repairs : tuple of Repair
-        One per joint.
+        One per joint, declined ones too.
     """
     contacts = _contacts(draft, layout, settings)
     if len(contacts.node) == 0:
         return draft, ()
     contacts, facing = _without_facing(draft, layout, contacts)
     contacts = contacts[raw_order(draft.raw_points, np.maximum(draft.source_point[contacts.node], 0))]
-    repairs = _records(draft, layout, contacts)
+    repairs = settled(_records(draft, layout, contacts), verdicts)
+    contacts = contacts[np.flatnonzero([repair.choice == "join" for repair in repairs])]
+    if len(contacts.node) == 0:
+        return draft, repairs
     contacts, inside = _followed_inside(draft, layout, contacts, settings.joints_within)
     gone = np.concatenate((facing.gone, inside.gone))
     target, split = _targets(draft, contacts, settings)

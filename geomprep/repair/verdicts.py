@@ -3,15 +3,15 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
 from geomprep.errors import InputError
 from geomprep.findings import Finding, Severity
-from geomprep.model import FloatArray
+from geomprep.model import FloatArray, Repair
 
-__all__ = ["OPEN", "PERSON", "RULE", "Verdict", "Verdicts", "Zones"]
+__all__ = ["OPEN", "PERSON", "RULE", "Verdict", "Verdicts", "Zones", "settled"]
 
 RULE, PERSON, OPEN = "rule", "person", "open"
 """Who decided: the rule of the step, a person, or nobody yet (left as in the input)."""
@@ -130,3 +130,32 @@ class Verdicts:
             for key, verdict in sorted(self.recorded.items())
             if verdict.by == PERSON and key not in known
         )
+
+
+def settled(repairs: tuple[Repair, ...], verdicts: Verdicts) -> tuple[Repair, ...]:
+    """Return proposed repairs with recorded choices in the place of the rule's.
+
+    Parameters
+    ----------
+    repairs : tuple of Repair
+        As the rule would make them.
+    verdicts : Verdicts
+
+    Returns
+    -------
+    tuple of Repair
+        A repair that is left keeps its conductance as it was before.
+    """
+    if not verdicts.recorded:
+        return repairs
+    return tuple(_settled_one(repair, verdicts) for repair in repairs)
+
+
+def _settled_one(repair: Repair, verdicts: Verdicts) -> Repair:
+    """One repair with its recorded choice."""
+    verdict = verdicts.settle(repair.id, repair.options, repair.choice)
+    if verdict.choice == repair.choice:
+        return replace(repair, verdict_by=verdict.by)
+    return replace(
+        repair, choice=verdict.choice, verdict_by=verdict.by, conductance_after=repair.conductance_before, raw_points=()
+    )

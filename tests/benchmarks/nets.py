@@ -40,7 +40,9 @@ def tree(n_points: int, per_line: int = 20, seed: int = 1) -> Lines:
     for level in range(depth.max() + 1):
         rows = np.flatnonzero(depth == level)
         if level:
-            heading[rows] += heading[parent[rows]]  # daughters go on rather than back
+            aside = np.cross(heading[parent[rows]], heading[rows - (rows + 1) % 2])  # sisters leave to opposite sides
+            aside *= np.where(rows % 2, 1.0, -1.0)[:, None] / np.linalg.norm(aside, axis=1, keepdims=True)
+            heading[rows] = heading[parent[rows]] + aside
             heading[rows] /= np.linalg.norm(heading[rows], axis=1, keepdims=True)
         start = end[np.maximum(parent[rows], 0)] if level else np.zeros((len(rows), 3))
         end[rows] = start + heading[rows] * 14.0 * size[rows, None]
