@@ -97,7 +97,5 @@ class OpenQuestions(InputError):
 
     def __init__(self, questions: Sequence[Question]) -> None:
         self.questions = tuple(questions)
-        listed = "; ".join(
-            f"({number}) {question.oneline()}" for number, question in enumerate(self.questions, 1)
-        )
+        listed = "; ".join(f"({number}) {question.oneline()}" for number, question in enumerate(self.questions, 1))
         super().__init__(f"the case leaves {len(self.questions)} question(s) open: {listed}")

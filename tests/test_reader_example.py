@@ -1,14 +1,7 @@
 """The receiver's example is short, uses json and numpy alone, and meets the steady check."""
 
 import ast
-import importlib.util
-import json
-import subprocess
-import sys
 from pathlib import Path
-from types import ModuleType
-
-import pytest
 
 EXAMPLE = Path(__file__).parent / "reader_example.py"
 

@@ -7,7 +7,8 @@ from geomprep.assign.gravity import Gravity, gravity, heights, with_heights
 from geomprep.assign.imaging import ImagingPressures, ImagingResult, imaging_transmural
 from geomprep.assign.inlets import assign_inlets
 from geomprep.assign.lumped import imaged_wave_speed, lump
-from geomprep.assign.outlets import OUTLET_MODELS, OutletResult, assign_outlets
+from geomprep.assign.outlet_models import OUTLET_MODELS
+from geomprep.assign.outlets import OutletResult, assign_outlets
 from geomprep.assign.splits import SPLIT_RULES
 from geomprep.assign.surroundings import StationSurroundings, SurroundingsSettings, station_surroundings
 from geomprep.assign.walls import WallSettings, assign_walls

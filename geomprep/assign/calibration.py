@@ -2,33 +2,38 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Final
 
 import numpy as np
 
 from geomprep.assign.end_settings import CalibrationSettings, OutletSettings
 from geomprep.assign.ends import Ends
 from geomprep.assign.labels import end_segment, node_label
-from geomprep.assign.losses import losses_text, segment_resistance
+from geomprep.assign.losses import blood_column, losses_text, node_parts, solve_imaged
 from geomprep.assign.splits import Unshared, exponent_value, outlet_shares
 from geomprep.errors import CaseError, ModelError
-from geomprep.model import FloatArray, IntArray, Network
-from geomprep.solve import Boundary, Solution, parts, solve_between
-from geomprep.units import STANDARD_GRAVITY, format_quantity
+from geomprep.model import FloatArray, IntArray, Network, end_arrays
+from geomprep.solve import Boundary, Solution
+from geomprep.units import format_quantity
 
-__all__ = ["Calibrated", "calibrate"]
+__all__ = ["LEAST_REMAINING", "Calibrated", "calibrate"]
 
-_FLOW_AGREES = 1e-3
+LEAST_REMAINING: Final = 0.01
+"""Part of the pressure difference from inlet to far side that must be left at an outlet."""
+
+_FLOWS_AGREE = 1e-6
 
 
 @dataclass(frozen=True, eq=False)
 class Calibrated:
-    """What calibration found for some outlets.
+    """What calibration found for the outlets that state no resistance.
 
     Attributes
     ----------
     rows : (c,) int array
-        Rows of the outlets, in the order of ``ends.outlet_nodes``.
+        Rows of these outlets, in the order of ``ends.outlet_nodes``.
     share : (c,) float array
     flow : (c,) float array
         Target outflow, m³/s.
@@ -51,28 +56,30 @@ class Calibrated:
 def calibrate(
     network: Network,
     ends: Ends,
-    entries: list[OutletSettings],
+    entries: Sequence[OutletSettings],
     settings: CalibrationSettings,
-    far_pressure: FloatArray,
-    rows: IntArray,
+    stated: tuple[FloatArray, FloatArray],
+    least_remaining: float = LEAST_REMAINING,
 ) -> Calibrated:
     """Find the total resistance of outlets that state none.
 
-    The target flows leave at the outlets, the first inlet of each connected part stands at the
-    mean pressure, and R = (p_node − p_far)/Q.
+    The target flows leave at these outlets, the first inlet of each connected part stands at
+    the mean pressure, all other ends are as stated, and R = (p_node − p_far)/Q.
 
     Parameters
     ----------
     network : Network
         With measures, blood, inlets and node heights.
     ends : Ends
-    entries : list of OutletSettings
+    entries : sequence of OutletSettings
         Settings of every outlet node, in the order of ``ends.outlet_nodes``.
     settings : CalibrationSettings
-    far_pressure : (o,) float array
-        Behind every outlet, Pa; at the node for a fixed pressure.
-    rows : (c,) int array
-        Outlets to calibrate.
+    stated : (o,) and (o,) float array
+        Pressure behind every outlet, and its total resistance: 0 where the node itself is held,
+        NaN where it is to be found.
+    least_remaining : float
+        A smaller part of the pressure difference from inlet to far side, left at an outlet, is
+        refused: the resistance of the outlet would be an accident of the radii.
 
     Returns
     -------
@@ -85,131 +92,148 @@ def calibrate(
     ModelError
         A resistance comes out too small or negative: the path of losses is named.
     """
-    total = _total_flow(network, settings)
-    share, key = _shares(network, ends, entries, settings, rows, total)
+    far_pressure, resistance = stated
+    rows = np.flatnonzero(np.isnan(resistance))
+    total = _total_flow(network, ends, entries, settings, rows)
+    share, key = _shares(network, ends, entries, settings, (rows, total))
     flow = share * total
-    boundary = _boundary(network, ends, entries, settings, far_pressure)
+    boundary = _boundary(network, ends, settings, stated)
     boundary.inflow[len(ends.inlet_nodes) + rows] = -flow
-    segments = network.segments
-    conductance = 1.0 / segment_resistance(network)
-    found = solve_between(len(network.nodes), segments.from_node, segments.to_node, conductance, boundary)
+    _check_reached(network, ends, boundary, rows)
+    found = solve_imaged(network, boundary)
     _check_inflow(network, found)
-    node = ends.outlet_nodes[rows]
-    pressure = found.head[node] - _column(network)[node]
-    resistance = (pressure - far_pressure[rows]) / flow
-    _check_resistance(network, ends, rows, (found, flow, resistance, far_pressure))
-    return Calibrated(rows, share, flow, pressure, resistance, key)
+    pressure = found.head - blood_column(network, network.nodes.height)
+    node, far = ends.outlet_nodes[rows], far_pressure[rows]
+    least = least_remaining * (pressure[ends.inlet_nodes].max() - far)
+    _check_remaining(network, (node, flow, far, least), pressure, found)
+    return Calibrated(rows, share, flow, pressure[node], (pressure[node] - far) / flow, key)
 
 
-def _column(network: Network) -> FloatArray:
-    """ρ g z of every node, Pa."""
-    density = network.blood.density if network.blood else 0.0
-    return density * STANDARD_GRAVITY * network.nodes.height
-
-
-def _total_flow(network: Network, settings: CalibrationSettings) -> float:
-    """Stated total flow, else the sum of the inlet flows."""
+def _total_flow(
+    network: Network,
+    ends: Ends,
+    entries: Sequence[OutletSettings],
+    settings: CalibrationSettings,
+    rows: IntArray,
+) -> float:
+    """Stated total flow, else the flows of these outlets, else those of all inlets."""
     if settings.total_flow is not None:
         return settings.total_flow
+    own = [entries[row].mean_flow for row in rows.tolist()]
+    if None not in own:
+        return float(sum(flow or 0.0 for flow in own))
     flows = [inlet.mean_flow for inlet in network.inlets or ()]
-    if not flows or any(flow is None for flow in flows):
+    if not flows or None in flows or len(rows) < len(entries):
+        node = int(ends.outlet_nodes[rows[own.index(None)]])
         raise CaseError(
-            "calibration.total_flow: missing, and not every inlet states a mean_flow; give one or the other"
+            f"calibration.total_flow: missing; outlet {node_label(network, node)} needs it for its share (the inlet flows "
+            "stand for it only where every inlet states one and no outlet states its own pressure or resistance)"
         )
-    return float(sum(flow for flow in flows if flow is not None))
+    return float(sum(flow or 0.0 for flow in flows))
 
 
 def _shares(
     network: Network,
     ends: Ends,
-    entries: list[OutletSettings],
+    entries: Sequence[OutletSettings],
     settings: CalibrationSettings,
-    rows: IntArray,
-    total: float,
+    wanted: tuple[IntArray, float],
 ) -> tuple[FloatArray, str]:
     """Share of each outlet to calibrate, and the literature key of the exponent."""
-    stated = np.full(len(rows), np.nan)
-    for place, row in enumerate(rows.tolist()):
-        entry = entries[row]
-        if entry.share is not None:
-            stated[place] = entry.share
-        elif entry.mean_flow is not None:
-            stated[place] = entry.mean_flow / total
-    unshared = rows[np.isnan(stated)]
+    rows, total = wanted
+    own = [entries[row] for row in rows.tolist()]
+    flows = np.array([np.nan if entry.mean_flow is None else entry.mean_flow for entry in own], dtype=np.float64)
+    shares = np.array([np.nan if entry.share is None else entry.share for entry in own], dtype=np.float64)
+    stated = np.where(np.isnan(shares), flows / total, shares)
+    node = ends.outlet_nodes[rows[np.isnan(stated)]]
+    if network.measures is None:
+        raise ModelError("shares by radius need measures; measure the segments first")
+    radius = network.measures.median_radius[end_segment(network, node)[0]]
     exponent, key = exponent_value(settings.exponent)
-    segment, _ = end_segment(network, ends.outlet_nodes[unshared])
-    radius = network.measures.median_radius[segment] if network.measures else np.zeros(0)
-    labels = tuple(node_label(network, node) for node in ends.outlet_nodes[unshared].tolist())
+    labels = tuple(node_label(network, one) for one in node.tolist())
     return outlet_shares(stated, settings.split or "shares", Unshared(radius, exponent, labels)), key
 
 
 def _boundary(
-    network: Network,
-    ends: Ends,
-    entries: list[OutletSettings],
-    settings: CalibrationSettings,
-    far_pressure: FloatArray,
+    network: Network, ends: Ends, settings: CalibrationSettings, stated: tuple[FloatArray, FloatArray]
 ) -> Boundary:
     """Ends while calibrating: the first inlet of each part holds the mean pressure."""
-    inlets = network.inlets or ()
-    column = _column(network)
-    flow = np.array([np.nan if inlet.mean_flow is None else inlet.mean_flow for inlet in inlets])
-    pressure = np.array([0.0 if inlet.pressure is None else inlet.pressure for inlet in inlets])
+    node, inflow, pressure, _ = end_arrays(network.inlets or (), ())
     if settings.mean_pressure is not None:
-        first = _first_inlets(network, ends.inlet_nodes)
-        flow[first], pressure[first] = np.nan, settings.mean_pressure
-    elif np.isfinite(flow).all():
-        raise CaseError("calibration.mean_pressure: missing, and no inlet states a pressure; outlets need one of them")
-    resistance = [entry.resistance or (entry.characteristic_resistance or 0.0) + (entry.peripheral_resistance or 0.0)
-                  for entry in entries]  # fmt: skip
+        for row in _first_inlets(network, node).tolist():
+            if np.isnan(inflow[row]) and not np.isclose(pressure[row], settings.mean_pressure, rtol=1e-9, atol=0.0):
+                raise CaseError(
+                    f"calibration.mean_pressure = {format_quantity(settings.mean_pressure, 'mmHg')}: inlet "
+                    f"{node_label(network, int(node[row]))} states {format_quantity(float(pressure[row]), 'mmHg')}; "
+                    "keep one of them"
+                )
+            inflow[row], pressure[row] = np.nan, settings.mean_pressure
+    far_pressure, resistance = stated
+    node = np.concatenate((node, ends.outlet_nodes))
     return Boundary(
-        node=np.concatenate((ends.inlet_nodes, ends.outlet_nodes)),
-        inflow=np.concatenate((flow, np.full(len(entries), np.nan))),
-        head=np.concatenate((pressure + column[ends.inlet_nodes], far_pressure + column[ends.outlet_nodes])),
-        resistance=np.concatenate((np.zeros(len(inlets)), np.array(resistance, dtype=np.float64))),
+        node=node,
+        inflow=np.concatenate((inflow, np.full(len(resistance), np.nan))),
+        head=np.concatenate((pressure, far_pressure)) + blood_column(network, network.nodes.height)[node],
+        resistance=np.concatenate((np.zeros(len(inflow)), resistance)),
     )
 
 
 def _first_inlets(network: Network, inlet_nodes: IntArray) -> IntArray:
     """Row of the first inlet of each connected part."""
-    segments = network.segments
-    part = parts(len(network.nodes), segments.from_node, segments.to_node, np.ones(len(segments)))
-    return np.sort(np.unique(part[inlet_nodes], return_index=True)[1]).astype(np.int64)
+    first = np.unique(node_parts(network)[inlet_nodes], return_index=True)[1]
+    return np.sort(first).astype(np.int64)
+
+
+def _check_reached(network: Network, ends: Ends, boundary: Boundary, rows: IntArray) -> None:
+    """Refuse outlets that no inlet reaches, and parts whose level no pressure sets."""
+    part = node_parts(network)
+    node = ends.outlet_nodes[rows]
+    lost = node[~np.isin(part[node], part[ends.inlet_nodes])]
+    if lost.size:
+        raise ModelError(
+            f"outlet {node_label(network, int(lost[0]))}: no inlet reaches it, so that no flow can leave there; "
+            "join it to the rest, or hold a fixed pressure there"
+        )
+    level = part[boundary.node[np.isnan(boundary.inflow)]]
+    open_level = node[~np.isin(part[node], level)]
+    if open_level.size:
+        raise CaseError(
+            f"calibration.mean_pressure: missing; nothing else sets the pressure before outlet "
+            f"{node_label(network, int(open_level[0]))}"
+        )
 
 
 def _check_inflow(network: Network, found: Solution) -> None:
     """Refuse a total flow that the stated inlet flows contradict."""
     for row, inlet in enumerate(network.inlets or ()):
-        if inlet.mean_flow is None:
-            continue
         got = float(found.inflow[row])
-        if abs(got - inlet.mean_flow) > _FLOW_AGREES * abs(inlet.mean_flow):
+        if inlet.mean_flow is not None and abs(got - inlet.mean_flow) > _FLOWS_AGREE * abs(inlet.mean_flow):
             raise CaseError(
-                f"calibration: the outlets take {format_quantity(got, 'mL/min')} from inlet "
-                f"{node_label(network, inlet.node)}, which states {format_quantity(inlet.mean_flow, 'mL/min')}; "
-                "make total_flow and the inlet flows agree, or state the flow once"
+                f"calibration: the outlets take {format_quantity(got, 'mL/min', 7)} from inlet "
+                f"{node_label(network, inlet.node)}, which states {format_quantity(inlet.mean_flow, 'mL/min', 7)}; "
+                "make total_flow and the inlet flows agree, or leave total_flow out"
             )
 
 
-def _check_resistance(
+def _check_remaining(
     network: Network,
-    ends: Ends,
-    rows: IntArray,
-    values: tuple[Solution, FloatArray, FloatArray, FloatArray],
+    outlets: tuple[IntArray, FloatArray, FloatArray, FloatArray],
+    pressure: FloatArray,
+    found: Solution,
 ) -> None:
-    """Refuse a resistance that is not above zero, with the way on which the pressure is lost."""
-    found, flow, resistance, far_pressure = values
-    bad = np.flatnonzero(~(resistance > 0))
+    """Refuse an outlet at which too little pressure is left, with the way on which it is lost."""
+    node, flow, far, least = outlets
+    remaining = pressure[node] - far
+    bad = np.flatnonzero(~((remaining > 0) & (remaining >= least)))
     if bad.size == 0:
         return
-    place = int(bad[np.argmin(resistance[bad])])
-    node = int(ends.outlet_nodes[rows[place]])
-    pressure = far_pressure[rows[place]] + resistance[place] * flow[place]
+    row = int(bad[np.argmin(remaining[bad] / flow[bad])])
+    others = f" ({bad.size - 1} more outlets fail too)" if bad.size > 1 else ""
+    leaving = format_quantity(float(flow[row]), "mL/min")
+    before, behind = (format_quantity(float(value), "mmHg") for value in (pressure[node[row]], far[row]))
     raise ModelError(
-        f"outlet {node_label(network, node)}: {format_quantity(float(flow[place]), 'mL/min')} would leave it at "
-        f"{format_quantity(float(pressure), 'mmHg')}, not above its far pressure of "
-        f"{format_quantity(float(far_pressure[rows[place]]), 'mmHg')}: its resistance would be "
-        f"{format_quantity(float(resistance[place]), 'mmHg*s/mL')}. The geometry cannot carry this flow "
-        f"(a radius too small, a missing way, a wrong unit). "
-        f"Losses on the way: {losses_text(network, found.flow, node)}"
+        f"outlet {node_label(network, int(node[row]))}: with {leaving} its pressure would be {before} against {behind} "
+        f"behind it, a resistance of {format_quantity(float(remaining[row] / flow[row]), 'mmHg*s/mL')}{others}: the "
+        "geometry cannot carry this flow (a radius too small, a missing way, a wrong unit). Lost on the way: "
+        f"{losses_text(network, found.flow, int(node[row]))}"
     )

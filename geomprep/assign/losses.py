@@ -1,4 +1,4 @@
-"""Segments between their ends: resistances, and the path on which pressure is lost."""
+"""Flow through the imaged network: resistances, a solve between its ends, where pressure is lost."""
 
 from __future__ import annotations
 
@@ -8,9 +8,10 @@ from geomprep.assign.labels import segment_label
 from geomprep.errors import ModelError
 from geomprep.laws.lumped import resistance
 from geomprep.model import FloatArray, IntArray, Network
-from geomprep.units import format_quantity
+from geomprep.solve import Boundary, Solution, parts, solve_between
+from geomprep.units import STANDARD_GRAVITY, format_quantity
 
-__all__ = ["losses_text", "path_of_losses", "segment_resistance"]
+__all__ = ["blood_column", "losses_text", "node_parts", "path_of_losses", "segment_resistance", "solve_imaged"]
 
 
 def segment_resistance(network: Network) -> FloatArray:
@@ -24,6 +25,57 @@ def segment_resistance(network: Network) -> FloatArray:
     if network.measures is None or network.blood is None:
         raise ModelError("resistances need measures and blood; measure the segments and assign blood first")
     return resistance(network.measures.inverse_fourth_power, network.blood.viscosity, network.blood.velocity_profile)
+
+
+def blood_column(network: Network, height: FloatArray) -> FloatArray:
+    """Return ρ g z of blood at heights, Pa.
+
+    Raises
+    ------
+    ModelError
+        The network has no blood yet.
+    """
+    if network.blood is None:
+        raise ModelError("a column of blood needs its density; assign blood first")
+    return network.blood.density * STANDARD_GRAVITY * height
+
+
+def node_parts(network: Network) -> IntArray:
+    """Return the number of the connected part of each node, (n,)."""
+    segments = network.segments
+    return parts(len(network.nodes), segments.from_node, segments.to_node, np.ones(len(segments)))
+
+
+def solve_imaged(network: Network, boundary: Boundary) -> Solution:
+    """Solve the linear flow on the imaged radii.
+
+    Parameters
+    ----------
+    network : Network
+        With `measures` and `blood`.
+    boundary : Boundary
+        Heads in Pa, the column of blood at the end's height included.
+
+    Returns
+    -------
+    Solution
+
+    Raises
+    ------
+    ModelError
+        A connected part reaches no pressure, which is named.
+    """
+    part = node_parts(network)
+    held = part[boundary.node[~np.isfinite(boundary.inflow)]]
+    loose = np.flatnonzero(~np.isin(part, held))
+    if loose.size:
+        raise ModelError(
+            f"the part of the network with node {network.nodes.id[loose[0]]} reaches no pressure: put an outlet or an "
+            "inlet pressure there, or leave the part out"
+        )
+    segments = network.segments
+    conductance = 1.0 / segment_resistance(network)
+    return solve_between(len(network.nodes), segments.from_node, segments.to_node, conductance, boundary)
 
 
 def path_of_losses(network: Network, flow: FloatArray, node: int) -> IntArray:
@@ -48,17 +100,13 @@ def path_of_losses(network: Network, flow: FloatArray, node: int) -> IntArray:
     head = np.where(flow >= 0, segments.to_node, segments.from_node)
     tail = np.where(flow >= 0, segments.from_node, segments.to_node)
     path: list[int] = []
-    seen = {node}
-    while True:
-        arriving = np.flatnonzero((head == node) & (flow != 0) & (tail != node))
-        if arriving.size == 0:
-            break
-        row = int(arriving[np.argmax(np.abs(flow[arriving]))])
-        node = int(tail[row])
-        if node in seen:
-            break
+    seen: set[int] = set()
+    while node not in seen:
         seen.add(node)
-        path.append(row)
+        arriving = np.flatnonzero((head == node) & (flow != 0) & (tail != node))
+        if arriving.size:
+            path.append(int(arriving[np.argmax(np.abs(flow[arriving]))]))
+            node = int(tail[path[-1]])
     return np.array(path[::-1], dtype=np.int64)
 
 
@@ -84,9 +132,9 @@ def losses_text(network: Network, flow: FloatArray, node: int, most: int = 4) ->
     order = np.argsort(-loss, kind="stable")
     shown = [
         f"{segment_label(network, int(path[row]))} {format_quantity(float(loss[row]), 'mmHg', 3)}"
-        for row in order[:most]
+        for row in order[:most].tolist()
     ]
-    more = loss[order[most:]].sum()
     if len(path) > most:
-        shown.append(f"{len(path) - most} more {format_quantity(float(more), 'mmHg', 3)}")
+        rest = float(loss[order[most:]].sum())
+        shown.append(f"{len(path) - most} more {format_quantity(rest, 'mmHg', 3)}")
     return ", ".join(shown) or "no segment brings blood here"

@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
-from typing import Final
 
 import numpy as np
 
@@ -13,30 +12,24 @@ from geomprep.assign.compliance import outlet_compliance
 from geomprep.assign.end_settings import CalibrationSettings, OutletSettings
 from geomprep.assign.ends import Ends
 from geomprep.assign.labels import end_segment, node_label
-from geomprep.assign.origins import origins_by_rows
+from geomprep.assign.outlet_models import OUTLET_MODELS, OutletNumbers
+from geomprep.assign.outlet_origins import outlet_origins
 from geomprep.errors import CaseError, ModelError
+from geomprep.findings import Finding, Severity
 from geomprep.laws.lumped import characteristic_impedance
-from geomprep.model import Basis, BoolArray, FloatArray, Network, Origin, Outlet
+from geomprep.model import FloatArray, Network, Origin, Outlet
 from geomprep.units import format_quantity
 
-__all__ = ["OUTLET_MODELS", "OutletResult", "assign_outlets"]
-
-Needs = Callable[[OutletSettings], bool]
-
-OUTLET_MODELS: Final[dict[str, Needs]] = {
-    "fixed pressure": lambda entry: False,
-    "resistance": lambda entry: entry.resistance is None and entry.peripheral_resistance is None,
-    "three-element windkessel": lambda entry: entry.resistance is None and entry.peripheral_resistance is None,
-}
-"""Model of an outlet -> whether its resistance is left to calibration."""
+__all__ = ["OutletResult", "assign_outlets", "completed_entries", "far_pressures", "stated_totals"]
 
 
 @dataclass(frozen=True)
 class OutletResult:
-    """The outlets of a network and where their numbers come from."""
+    """The outlets of a network, where their numbers come from, and how they were found."""
 
     outlets: tuple[Outlet, ...]
     origins: tuple[Origin, ...]
+    findings: tuple[Finding, ...] = ()
 
 
 def assign_outlets(
@@ -48,6 +41,10 @@ def assign_outlets(
 ) -> OutletResult:
     """Make the outlets of a network.
 
+    Resistances that the case does not state are calibrated (:func:`geomprep.assign.calibration.calibrate`).
+    The first resistance of a windkessel is ρ c/A of the segment end where not stated, which sends
+    back no wave of high frequency (Alastruey et al. 2008, Commun Comput Phys 4:317-336).
+
     Parameters
     ----------
     network : Network
@@ -58,7 +55,7 @@ def assign_outlets(
         Entries in the order of the case.
     calibration : CalibrationSettings, optional
     wave_speed : (k,) float array
-        Wave speed at every station at the imaged state, m/s; gives ρc/A.
+        Wave speed at every station at the imaged state, m/s.
 
     Returns
     -------
@@ -70,26 +67,53 @@ def assign_outlets(
     CaseError
         A model is unknown, or a value that it needs is missing.
     ModelError
-        A resistance comes out negative, or the characteristic resistance exceeds the total.
+        A resistance comes out too small or negative, or the characteristic resistance is
+        not less than the total.
     """
     target = calibration or CalibrationSettings()
-    complete = {entry: _completed(settings[entry], entry, target) for entry in np.unique(ends.outlet_entries).tolist()}
-    entries = [complete[entry] for entry in ends.outlet_entries.tolist()]
-    far = np.array([_far_pressure(entry) for entry in entries], dtype=np.float64)
-    wanted = np.flatnonzero([OUTLET_MODELS[entry.model or ""](entry) for entry in entries]).astype(np.int64)
+    entries = completed_entries(ends, settings, target)
+    far = far_pressures(entries)
+    windkessel = np.array([OUTLET_MODELS[str(entry.model)].windkessel for entry in entries], dtype=np.bool_)
+    first = np.where(windkessel, _characteristic(network, ends, entries, wave_speed), 0.0)
+    total = stated_totals(entries, first)
     found = None
-    if wanted.size:
-        _check_calibration(network, ends, entries, calibration, int(wanted[0]))
-        found = calibrate(network, ends, entries, target, far, wanted)
-    total = _total_resistance(entries, found)
-    characteristic = _characteristic(network, ends, entries, wave_speed)
-    _check_characteristic(network, ends, entries, characteristic, total)
-    compliance = outlet_compliance(network, ends, entries, target, (total, characteristic))
+    if np.isnan(total).any():
+        found = calibrate(network, ends, entries, target, (far, total))
+        total[found.rows] = found.resistance
+    _check_characteristic(network, ends, first, total, wave_speed)
+    own = [np.nan if entry.peripheral_resistance is None else entry.peripheral_resistance for entry in entries]
+    second = np.where(np.isnan(own), total - first, own)
+    compliance = outlet_compliance(network, ends, entries, target, (windkessel, total, second))
+    share = dict(zip(found.rows.tolist(), found.share.tolist(), strict=True)) if found else {}
+    columns = np.stack((far, total, first, second, compliance), axis=1).tolist()
+    rows = enumerate(zip(entries, ends.outlet_nodes.tolist(), columns, strict=True))
     outlets = tuple(
-        _outlet(row, node, entries[row], (far, total, characteristic, compliance), found)
-        for row, node in enumerate(ends.outlet_nodes.tolist())
+        OUTLET_MODELS[str(entry.model)].record(OutletNumbers(node, behind, whole, near, rest, store, share.get(row)))
+        for row, (entry, node, (behind, whole, near, rest, store)) in rows
     )
-    return OutletResult(outlets, _origins(outlets, ends, settings, found, target))
+    return OutletResult(outlets, outlet_origins(outlets, ends, settings, target, found), _told(found, target))
+
+
+def completed_entries(
+    ends: Ends, settings: Sequence[OutletSettings], target: CalibrationSettings
+) -> list[OutletSettings]:
+    """Return the entry of every outlet node, with what the calibration gives to all.
+
+    Raises
+    ------
+    CaseError
+        A model is unknown or missing, or a fixed pressure without its pressure.
+
+    Examples
+    --------
+    >>> ends = Ends(None, *[np.zeros(1, int)] * 5)
+    >>> completed_entries(ends, [OutletSettings("a")], CalibrationSettings(model="resistance"))[0].model
+    'resistance'
+    >>> completed_entries(ends, [OutletSettings("a")], CalibrationSettings())
+    Traceback (most recent call last):
+    geomprep.errors.CaseError: outlets[0].model: missing; choose one of fixed pressure, resistance, ...
+    """
+    return [_completed(settings[number], number, target) for number in ends.outlet_entries.tolist()]
 
 
 def _completed(entry: OutletSettings, number: int, target: CalibrationSettings) -> OutletSettings:
@@ -99,158 +123,83 @@ def _completed(entry: OutletSettings, number: int, target: CalibrationSettings) 
         raise CaseError(f"outlets[{number}].model: missing; choose one of {', '.join(OUTLET_MODELS)}")
     if model not in OUTLET_MODELS:
         raise CaseError(f"outlets[{number}].model = '{model}': unknown; choose one of {', '.join(OUTLET_MODELS)}")
-    if model == "fixed pressure" and entry.pressure is None:
-        raise CaseError(f"outlets[{number}].pressure: missing; the model 'fixed pressure' needs it")
+    if OUTLET_MODELS[model].held and entry.pressure is None:
+        raise CaseError(f"outlets[{number}].pressure: missing; the model '{model}' needs it")
     far = entry.far_pressure if entry.far_pressure is not None else target.far_pressure
     return replace(entry, model=model, far_pressure=far)
 
 
-def _far_pressure(entry: OutletSettings) -> float:
-    """Pressure behind an outlet: its own at a fixed pressure, else the far one, else the atmosphere."""
-    if entry.model == "fixed pressure":
-        return float(entry.pressure or 0.0)
-    return float(entry.far_pressure or 0.0)
+def far_pressures(entries: Sequence[OutletSettings]) -> FloatArray:
+    """Return the pressure behind every outlet: its own where held, else the far one, else the atmosphere's 0."""
+    held = [OUTLET_MODELS[str(entry.model)].held for entry in entries]
+    chosen = [entry.pressure if own else entry.far_pressure for entry, own in zip(entries, held, strict=True)]
+    return np.array([pressure or 0.0 for pressure in chosen], dtype=np.float64)
 
 
-def _check_calibration(
-    network: Network,
-    ends: Ends,
-    entries: list[OutletSettings],
-    calibration: CalibrationSettings | None,
-    row: int,
-) -> None:
-    """Refuse an outlet without a resistance where nothing says how to find it."""
-    if calibration is None and all(entry.mean_flow is None for entry in entries):
-        raise CaseError(
-            f"outlet {node_label(network, int(ends.outlet_nodes[row]))}: model '{entries[row].model}' has no "
-            "resistance and the case has no [calibration]; give resistance, or total_flow, mean_pressure and "
-            "split there"
-        )
+def stated_totals(entries: Sequence[OutletSettings], characteristic: FloatArray) -> FloatArray:
+    """Return the total resistance of every outlet: 0 where held, NaN where it is to be calibrated.
 
-
-def _total_resistance(entries: list[OutletSettings], found: Calibrated | None) -> FloatArray:
-    """Total resistance of every outlet; the part that is not stated is NaN."""
-    total = np.array(
-        [
-            np.nan if entry.model == "fixed pressure" else entry.resistance if entry.resistance is not None else np.nan
-            for entry in entries
-        ],
-        dtype=np.float64,
-    )
-    if found is not None:
-        total[found.rows] = found.resistance
+    Parameters
+    ----------
+    entries : sequence of OutletSettings
+        Completed.
+    characteristic : (o,) float array
+        First resistance of windkessels, 0 elsewhere; added to a stated peripheral resistance.
+    """
+    total = np.zeros(len(entries))
+    for row, entry in enumerate(entries):
+        if OUTLET_MODELS[str(entry.model)].held:
+            continue
+        if entry.resistance is not None:
+            total[row] = entry.resistance
+        elif entry.peripheral_resistance is not None:
+            total[row] = entry.peripheral_resistance + characteristic[row]
+        else:
+            total[row] = np.nan
     return total
 
 
-def _characteristic(network: Network, ends: Ends, entries: list[OutletSettings], wave_speed: FloatArray) -> FloatArray:
-    """First resistance of every windkessel: stated, else ρc/A of the segment that ends there; NaN elsewhere."""
-    _, station = end_segment(network, ends.outlet_nodes)
-    density = network.blood.density if network.blood else np.nan
-    matched = characteristic_impedance(network.stations.area[station], wave_speed[station], density)
-    stated = [
-        np.nan if entry.characteristic_resistance is None else entry.characteristic_resistance for entry in entries
-    ]
-    windkessel = np.array([entry.model == "three-element windkessel" for entry in entries], dtype=np.bool_)
-    first = np.where(np.isnan(stated), matched, stated)
-    return np.where(windkessel, first, np.nan)
+def _characteristic(
+    network: Network, ends: Ends, entries: Sequence[OutletSettings], wave_speed: FloatArray
+) -> FloatArray:
+    """First resistance: stated, else ρ c/A of the segment that ends there."""
+    if network.blood is None:
+        raise ModelError("a characteristic resistance needs the density of blood; assign blood first")
+    station = end_segment(network, ends.outlet_nodes)[1]
+    matched = characteristic_impedance(network.stations.area[station], wave_speed[station], network.blood.density)
+    stated = [entry.characteristic_resistance for entry in entries]
+    return np.array([value if own is None else own for own, value in zip(stated, matched, strict=True)], np.float64)
 
 
 def _check_characteristic(
-    network: Network, ends: Ends, entries: list[OutletSettings], characteristic: FloatArray, total: FloatArray
+    network: Network, ends: Ends, first: FloatArray, total: FloatArray, wave_speed: FloatArray
 ) -> None:
     """Refuse a characteristic resistance that leaves nothing for the periphery."""
-    bad = np.flatnonzero(characteristic >= total)
+    bad = np.flatnonzero((first > 0) & (first >= total))
     if bad.size == 0:
         return
-    row = int(bad[np.argmax(characteristic[bad] / total[bad])])
+    row = int(bad[np.argmax(first[bad] / total[bad])])
     node = int(ends.outlet_nodes[row])
-    stated = entries[row].characteristic_resistance is not None
-    what = "as stated" if stated else "ρc/A of the vessel that ends there"
+    station = int(end_segment(network, ends.outlet_nodes[[row]])[1][0])
+    others = f" ({bad.size - 1} more outlets fail too)" if bad.size > 1 else ""
     raise ModelError(
-        f"outlet {node_label(network, node)}: its characteristic resistance ({what}) of "
-        f"{format_quantity(float(characteristic[row]), 'mmHg*s/mL')} is not below its total resistance of "
-        f"{format_quantity(float(total[row]), 'mmHg*s/mL')}; check radius and wave speed of this vessel, "
-        "or its share of the flow"
+        f"outlet {node_label(network, node)}: its characteristic resistance {format_quantity(first[row], 'mmHg*s/mL')} "
+        f"(wave speed {wave_speed[station]:.3g} m/s, radius {1e3 * network.stations.radius[station]:.3g} mm) is not less "
+        f"than its total resistance {format_quantity(total[row], 'mmHg*s/mL')}{others}: check the radius and the walls "
+        "of this vessel or its flow, or take the model 'resistance'"
     )
 
 
-def _outlet(
-    row: int,
-    node: int,
-    entry: OutletSettings,
-    values: tuple[FloatArray, FloatArray, FloatArray, FloatArray],
-    found: Calibrated | None,
-) -> Outlet:
-    """One outlet as the network carries it."""
-    far, total, characteristic, compliance = (array[row] for array in values)
-    share = None
-    if found is not None and row in found.rows:
-        share = float(found.share[np.flatnonzero(found.rows == row)[0]])
-    model = str(entry.model)
-    if model == "fixed pressure":
-        return Outlet(node, model, float(far))
-    if model == "resistance":
-        whole = total if np.isfinite(total) else entry.peripheral_resistance
-        return Outlet(node, model, float(far), peripheral_resistance=float(whole or 0.0), share=share)
-    peripheral = entry.peripheral_resistance if entry.peripheral_resistance is not None else total - characteristic
-    return Outlet(node, model, float(far), float(characteristic), float(peripheral), float(compliance), share)
-
-
-def _origins(
-    outlets: tuple[Outlet, ...],
-    ends: Ends,
-    settings: Sequence[OutletSettings],
-    found: Calibrated | None,
-    target: CalibrationSettings,
-) -> tuple[Origin, ...]:
-    """Where every number of every outlet comes from."""
-    origins: tuple[Origin, ...] = ()
-    calibrated = np.zeros(len(outlets), np.bool_)
-    if found is not None:
-        calibrated[found.rows] = True
-    for field in ("far_pressure", "characteristic_resistance", "peripheral_resistance", "compliance", "share"):
-        filled = np.array([getattr(outlet, field) is not None for outlet in outlets], dtype=np.bool_)
-        rows: list[tuple[Basis, str, BoolArray]] = []
-        for entry in np.unique(ends.outlet_entries).tolist():
-            here = filled & (ends.outlet_entries == entry)
-            stated = _stated_key(settings[entry], field, entry)
-            if stated:
-                rows.append((Basis.USER, stated, here))
-            else:
-                rows += _found_rows(field, here, calibrated, (found, target))
-        origins += origins_by_rows(f"outlets.{field}", rows)
-    return origins
-
-
-def _stated_key(entry: OutletSettings, field: str, number: int) -> str:
-    """Key of the case that states this number of this entry, or nothing."""
-    names = {
-        "far_pressure": ("pressure", "far_pressure"),
-        "peripheral_resistance": ("peripheral_resistance", "resistance"),
-    }
-    if field == "share" and entry.share is None and entry.mean_flow is not None:
-        return f"outlets[{number}].mean_flow"
-    for name in names.get(field, (field,)):
-        if getattr(entry, name) is not None:
-            return f"outlets[{number}].{name}"
-    return ""
-
-
-def _found_rows(
-    field: str, here: BoolArray, calibrated: BoolArray, how: tuple[Calibrated | None, CalibrationSettings]
-) -> list[tuple[Basis, str, BoolArray]]:
-    """Basis of numbers that the entry does not state."""
-    found, target = how
-    if field == "peripheral_resistance":
-        losses = "segments.lumped.resistance, outlets.share, inlets.mean_flow"
-        rest = "outlets.characteristic_resistance"
-        return [(Basis.DERIVED, losses, here & calibrated), (Basis.DERIVED, rest, here & ~calibrated)]
-    if field == "far_pressure" and target.far_pressure is None:
-        return [(Basis.PUBLISHED, "gauge-pressure-atmosphere", here)]
-    if field == "share" and found is not None and found.exponent_key:
-        return [(Basis.PUBLISHED, found.exponent_key, here)]
-    if field == "characteristic_resistance":
-        return [(Basis.DERIVED, "blood.density, stations.area, stations.stiffness", here)]
-    stated = {"far_pressure": "far_pressure", "share": "split"}
-    stated["compliance"] = "time_constant" if target.time_constant is not None else "compliance"
-    return [(Basis.USER, f"calibration.{stated[field]}", here)]
+def _told(found: Calibrated | None, target: CalibrationSettings) -> tuple[Finding, ...]:
+    """A note that says from what the outlets were calibrated."""
+    if found is None:
+        return ()
+    split = target.split or "shares"
+    power = "" if target.exponent is None or split == "shares" else f", exponent {target.exponent}"
+    at = "" if target.mean_pressure is None else f" and {format_quantity(target.mean_pressure, 'mmHg')} at the inlet"
+    message = (
+        f"{len(found.rows)} outlet(s) were calibrated to {format_quantity(float(found.flow.sum()), 'mL/min')} in all{at} "
+        f"(split: {split}{power}); their pressures came out between "
+        f"{format_quantity(float(found.pressure.min()), 'mmHg')} and {format_quantity(float(found.pressure.max()), 'mmHg')}."
+    )
+    return (Finding("calibrated outlets", Severity.NOTE, message, source=found.exponent_key),)

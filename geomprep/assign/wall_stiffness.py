@@ -170,8 +170,9 @@ def _question(use: WallUse, transmural: FloatArray, density: float) -> Question:
         ],
     )
     for one in _stiffness_rows(use.vessel_class):
-        state = ' with reference_state = "imaged"' if (one.value or 0.0) <= bound else ""
-        candidates.append(f'stiffness = "{one.key}" ({one.value:g} m/s){state}')
+        state = ' with reference_state = "imaged"' if one.value is not None and one.value <= bound else ""
+        speed = "" if one.value is None else f" ({one.value:g} m/s)"
+        candidates.append(f'stiffness = "{one.key}"{speed}{state}')
         evidence.append(f"{one.of}; {one.caution or one.citation}")
     return Question(
         f"{use.key}.wave_speed",

@@ -95,6 +95,7 @@ def assign_parameters(case: Case, drawn: Drawn) -> Assigned:
         None if case.calibration is None else CalibrationSettings(**dataclasses.asdict(case.calibration)),
         imaged_wave_speed(network),
     )
+    findings += result.findings
     network = _with(network, result.origins, outlets=result.outlets)
     return Assigned(network, field, imaged.described, heights(field, network.stations.position), tuple(findings))
 

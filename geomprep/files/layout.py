@@ -9,7 +9,7 @@ from geomprep.errors import FileError
 from geomprep.files.contained import Parsed
 from geomprep.findings import Finding
 
-__all__ = ["Declared", "Layout", "compare"]
+__all__ = ["Declared", "Layout", "compare", "unique"]
 
 
 @dataclass(frozen=True)
@@ -46,6 +46,8 @@ class Layout:
         Numeric arrays, None where the header does not say.
     later : tuple of callables
         Longer checks of the text, made while the child parses.
+    n_bytes : int
+        Bytes that all arrays take when they are read, as far as the header says.
     findings : tuple of Finding
         What is not used.
     """
@@ -57,7 +59,17 @@ class Layout:
     point_arrays: tuple[Declared, ...] | None = None
     cell_arrays: tuple[Declared, ...] | None = None
     later: tuple[Callable[[], None], ...] = ()
+    n_bytes: int = 0
     findings: tuple[Finding, ...] = ()
+
+
+def unique(name: str, kind: str, names: list[str]) -> None:
+    """Raise where an array has no name, or two have the same: one would be lost on reading."""
+    if "" in names:
+        raise FileError(name, f"array {names.index('')} on {kind}s has no name; name it")
+    for key in names:
+        if names.count(key) > 1:
+            raise FileError(name, f"two {kind} arrays are named '{key}'; rename one of them")
 
 
 def compare(name: str, layout: Layout, parsed: Parsed) -> None:

@@ -40,10 +40,12 @@ class Gate:
     ----------
     size : SizeArray, optional
         The array that holds the sizes; None while it is open.
+    likely : SizeArray
+        The same, or the first candidate while it is open.
     candidates : tuple of SizeArray
         Arrays that may hold sizes.
     hypotheses : tuple of Hypothesis
-        Readings of the array (or of the likeliest candidate), best first.
+        Readings of the likely array, best first.
     questions : tuple of Question
         What the case has to state.
     findings : tuple of Finding
@@ -51,6 +53,7 @@ class Gate:
     """
 
     size: SizeArray | None
+    likely: SizeArray
     candidates: tuple[SizeArray, ...]
     hypotheses: tuple[Hypothesis, ...]
     questions: tuple[Question, ...]
@@ -99,7 +102,7 @@ def gate(
         questions.append(Question(f"{key}.frame", text, ("LPS", "RAS"), _FRAME_EVIDENCE))
     findings = [*_scale_findings(statement, ranked, likely, key), *_frame_findings(statement, posture)]
     findings += _length_findings(contents, statement)
-    return Gate(size, candidates, ranked, tuple(questions), tuple(findings))
+    return Gate(size, likely, candidates, ranked, tuple(questions), tuple(findings))
 
 
 _FRAME_EVIDENCE = ("x to the patient's left, y to the back, z to the head", "x to the right, y to the front, z up")

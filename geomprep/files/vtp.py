@@ -8,14 +8,15 @@ from typing import Any
 from geomprep.atomic import replacing
 from geomprep.files.contents import AnyArray
 from geomprep.files.layout import Layout
+from geomprep.files.xml_layout import xml_layout
 from geomprep.model import IntArray
 
 __all__ = ["layout", "write"]
 
 
 def layout(name: str, data: bytes) -> Layout:
-    """Return what the header declares."""
-    return Layout("VTK XML PolyData", "vtkXMLPolyDataReader")
+    """Return what the header declares, checked against the bytes; raise FileError where they differ."""
+    return xml_layout(name, data, "PolyData")
 
 
 def write(

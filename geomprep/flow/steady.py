@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from geomprep.errors import ModelError
-from geomprep.model import FloatArray, IntArray, Network, SteadyState
+from geomprep.model import FloatArray, IntArray, Network, SteadyState, end_arrays
 from geomprep.solve import Boundary, parts, solve_between
 from geomprep.units import STANDARD_GRAVITY
 
@@ -53,7 +53,8 @@ def steady_state(network: Network) -> SteadyState:
         raise ModelError(f"the steady state needs {', '.join(missing)}; assign them first")
     column = network.blood.density * STANDARD_GRAVITY * network.nodes.height  # type: ignore[union-attr]
     conductance = 1.0 / network.lumped.resistance  # type: ignore[union-attr]
-    ends = _boundary(network, column)
+    node, inflow, pressure, resistance = end_arrays(network.inlets or (), network.outlets or ())
+    ends = Boundary(node, inflow, pressure + column[node], resistance)
     edges = network.segments.from_node, network.segments.to_node, conductance
     _check_references(network, edges, ends)
     found = solve_between(len(network.nodes), *edges, ends)
@@ -65,20 +66,6 @@ def steady_state(network: Network) -> SteadyState:
         inlet_flow=found.inflow[:n_inlets],
         outlet_flow=-found.inflow[n_inlets:],
         mass_residual=found.imbalance / largest if largest > 0 else 0.0,
-    )
-
-
-def _boundary(network: Network, column: FloatArray) -> Boundary:
-    """Inlets, then outlets, as ends in terms of head."""
-    inlets, outlets = network.inlets or (), network.outlets or ()
-    node = np.array([*(inlet.node for inlet in inlets), *(outlet.node for outlet in outlets)], dtype=np.int64)
-    flow = [np.nan if inlet.mean_flow is None else inlet.mean_flow for inlet in inlets]
-    pressure = [0.0 if inlet.pressure is None else inlet.pressure for inlet in inlets]
-    return Boundary(
-        node=node,
-        inflow=np.array([*flow, *(np.nan for _ in outlets)], dtype=np.float64),
-        head=np.array([*pressure, *(outlet.far_pressure for outlet in outlets)], dtype=np.float64) + column[node],
-        resistance=np.array([*(0.0 for _ in inlets), *(outlet.resistance for outlet in outlets)], dtype=np.float64),
     )
 
 

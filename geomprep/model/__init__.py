@@ -19,7 +19,7 @@ from geomprep.model.network import (
     Stations,
     Walls,
 )
-from geomprep.model.parameters import Blood, Inlet, Outlet, Surroundings, TubeLaw
+from geomprep.model.parameters import Blood, Inlet, Outlet, Surroundings, TubeLaw, end_arrays
 from geomprep.model.point_graph import PointGraph
 from geomprep.model.states import SteadyState
 
@@ -60,6 +60,7 @@ __all__ = [
     "chains",
     "concatenate",
     "degrees",
+    "end_arrays",
     "field",
     "field_tables",
     "raw_order",

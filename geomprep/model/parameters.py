@@ -2,9 +2,14 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
-__all__ = ["Blood", "Inlet", "Outlet", "Surroundings", "TubeLaw"]
+import numpy as np
+
+from geomprep.model.arrays import FloatArray, IntArray
+
+__all__ = ["Blood", "Inlet", "Outlet", "Surroundings", "TubeLaw", "end_arrays"]
 
 
 @dataclass(frozen=True)
@@ -119,3 +124,46 @@ class Outlet:
     def resistance(self) -> float:
         """Total resistance to the far pressure, Pa·s/m³; 0 for a fixed pressure."""
         return (self.characteristic_resistance or 0.0) + (self.peripheral_resistance or 0.0)
+
+
+def end_arrays(
+    inlets: Sequence[Inlet], outlets: Sequence[Outlet]
+) -> tuple[IntArray, FloatArray, FloatArray, FloatArray]:
+    """Return what stands at the ends as arrays, one row per end: inlets, then outlets.
+
+    Parameters
+    ----------
+    inlets : sequence of Inlet
+    outlets : sequence of Outlet
+
+    Returns
+    -------
+    node : (m,) int array
+    inflow : (m,) float array
+        Prescribed flow into the network, m³/s; NaN where a pressure is prescribed.
+    pressure : (m,) float array
+        Behind the resistance, Pa; 0 where a flow is prescribed.
+    resistance : (m,) float array
+        Pa·s/m³; 0 at inlets and where the node itself is held.
+
+    Examples
+    --------
+    >>> for column in end_arrays([Inlet(0, mean_flow=1e-6)], [Outlet(3, "fixed pressure", 700.0)]):
+    ...     print(column.tolist())
+    [0, 3]
+    [1e-06, nan]
+    [0.0, 700.0]
+    [0.0, 0.0]
+    >>> [len(array) for array in end_arrays([], [])]
+    [0, 0, 0, 0]
+    """
+    node = [*(inlet.node for inlet in inlets), *(outlet.node for outlet in outlets)]
+    flow = [np.nan if inlet.mean_flow is None else inlet.mean_flow for inlet in inlets]
+    pressure = [0.0 if inlet.pressure is None else inlet.pressure for inlet in inlets]
+    resistance = [*(0.0 for _ in inlets), *(outlet.resistance for outlet in outlets)]
+    return (
+        np.array(node, dtype=np.int64),
+        np.array([*flow, *(np.nan for _ in outlets)], dtype=np.float64),
+        np.array([*pressure, *(outlet.far_pressure for outlet in outlets)], dtype=np.float64),
+        np.array(resistance, dtype=np.float64),
+    )

@@ -14,10 +14,9 @@ trees of straight vessels. Sources:
 from __future__ import annotations
 
 import numpy as np
-import pytest
 
 from geomprep.files.contents import FileContents
-from geomprep.files.scale import hypotheses, length_text
+from geomprep.files.scale import hypotheses
 from geomprep.files.size_arrays import size_arrays
 
 # (parent row or −1, length mm, radius mm at start, radius mm at end)
