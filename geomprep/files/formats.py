@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from geomprep.errors import FileError
-from geomprep.files import legacy_vtk, vtp, vtu
+from geomprep.files import legacy_vtk, mesh, vtp, vtu
 from geomprep.files.contents import AnyArray
 from geomprep.files.layout import Layout
 from geomprep.model import IntArray
@@ -48,6 +48,9 @@ FORMATS = {
         Format(".vtp", "VTK XML PolyData", "vtk xml", vtp.layout, vtp.write),
         Format(".vtk", "VTK legacy", "vtk legacy", legacy_vtk.layout),
         Format(".vtu", "VTK XML UnstructuredGrid", "vtk xml", vtu.layout),
+        Format(".msh", "mesh (.msh)", "meshio", mesh.msh_layout),
+        Format(".xdmf", "mesh (.xdmf)", "meshio", mesh.xdmf_layout),
+        Format(".mesh", "mesh (.mesh)", "meshio", mesh.medit_layout),
     )
 }
 """Every format by the suffix of its files."""
