@@ -98,8 +98,8 @@ def _vtk_reader(kind: str) -> Any:
 def _listener(faults: list[str]) -> Any:
     """Something that VTK calls with the text of each error or warning."""
 
-    def heard(_source: Any, _event: str, text: str = "no text") -> None:
-        faults.append(text)
+    def heard(_source: Any, _event: str, text: str | None = None) -> None:
+        faults.append(text or "an error without a text")
 
     heard.CallDataType = "string0"  # type: ignore[attr-defined]
     return heard
