@@ -1,0 +1,1 @@
+"""Published networks laid out in space, for tests."""
