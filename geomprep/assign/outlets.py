@@ -113,7 +113,8 @@ def completed_entries(
     Traceback (most recent call last):
     geomprep.errors.CaseError: outlets[0].model: missing; choose one of fixed pressure, resistance, ...
     """
-    return [_completed(settings[number], number, target) for number in ends.outlet_entries.tolist()]
+    found = {number: _completed(settings[number], number, target) for number in np.unique(ends.outlet_entries).tolist()}
+    return [found[number] for number in ends.outlet_entries.tolist()]
 
 
 def _completed(entry: OutletSettings, number: int, target: CalibrationSettings) -> OutletSettings:

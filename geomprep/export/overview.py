@@ -24,7 +24,7 @@ _COLOURS = {"artery": "#a8452f", "vein": "#3f6a86", "unknown": "#77736a"}
 _MOST_NAMES = 60
 _NAME_SIZE = 10
 _MOST_CORNERS = 80
-_MOST_SEGMENTS = 1_000
+_MOST_SEGMENTS = 400
 """Above this the widest vessels are drawn; the picture says so."""
 
 

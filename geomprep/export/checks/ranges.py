@@ -57,6 +57,10 @@ def range_faults(flat: Mapping[str, Any]) -> Iterator[Fault]:
 
 def _record_faults(row: Field, records: list[dict[str, Any]]) -> Iterator[Fault]:
     """Faults of one field of a list of records."""
+    if not row.shape and not any(
+        _column_faults(row, [value for r in records if (value := r.get(row.name)) is not None])
+    ):
+        return
     for number, record in enumerate(records):
         for fault in _column_faults(row, record.get(row.name)):
             place = fault.place.removeprefix(row.path)
