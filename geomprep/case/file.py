@@ -205,9 +205,11 @@ class _Reading:
                 homes = _homes(name)
                 hint = f"a key of {homes}; put it below that line" if homes else nearest(name, first)
                 self.faults.append(f"unknown section or key '{name}'; {hint}")
-            for deeper in [known for known in plain if known.startswith(f"{name}.")]:
-                inner = [known.split(".")[1] for known in plain if known.startswith(f"{name}.")]
-                strangers = [key for key in table if key not in inner] if isinstance(table, dict) else [deeper]
+            inner = [known.split(".")[1] for known in plain if known.startswith(f"{name}.")]
+            if inner and not isinstance(table, dict):
+                self.faults.append(f"{name}: holds sections, such as [{name}.{inner[0]}]")
+            elif inner:
+                strangers = [key for key in table if key not in inner]
                 self.faults += [f"unknown section or key '{name}.{key}'; {nearest(key, inner)}" for key in strangers]
 
 

@@ -3,14 +3,18 @@
 from __future__ import annotations
 
 import os
+import tomllib
 from collections.abc import Callable, Sequence
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
 
 from geomprep.atomic import write_atomic
 from geomprep.case.inspect import Inspection, inspection_of
-from geomprep.errors import InputError, Question
+from geomprep.case.keys import key_table
+from geomprep.case.values import read_value
+from geomprep.errors import CaseError, InputError, Question
 from geomprep.files import FileContents, read_files
 from geomprep.files.statement import InputStatement
 from geomprep.model import FloatArray, IntArray
@@ -129,25 +133,70 @@ def _toml(text: str) -> str:
 
 def _input_section(file: str, content: FileContents, number: int, ask: Ask | None) -> str:
     """One ``[[input]]`` with what is known, and a line for every candidate of what is not."""
+    key = f"input[{number}]"
     statement = InputStatement(file)
-    found = inspection_of(content, statement, f"input[{number}]")
+    answers: dict[str, str] = {}
+    if ask is not None:
+        statement, answers = _asked(content, statement, key, ask)
+    found = inspection_of(content, statement, key)
     lines = ["\n[[input]]", f"file = {_toml(file)}"]
+    lines += [f"{name} = {answer}" for name, answer in answers.items()]
     lines += [f"# {finding.severity}: {finding.message}" for finding in found.findings]
     for question in found.questions:
-        lines += _answered(question, None if ask is None else ask(question))
+        lines += _open_lines(question)
     lines += _frame_lines(found)
     return "\n".join(lines) + "\n"
 
 
-def _answered(question: Question, answer: str | None) -> list[str]:
-    """The key with its answer, or one commented line per candidate."""
+def _asked(
+    content: FileContents, statement: InputStatement, key: str, ask: Ask
+) -> tuple[InputStatement, dict[str, str]]:
+    """What a person answers, question by question: an answer may open the next (both: which array tells?)."""
+    answers: dict[str, str] = {}
+    left_open: set[str] = set()
+    while True:
+        questions = inspection_of(content, statement, key).questions
+        question = next((each for each in questions if each.key not in left_open), None)
+        if question is None:
+            return statement, answers
+        answered = _answer(content, statement, question, ask)
+        if answered is None:
+            left_open.add(question.key)
+        else:
+            answer, statement = answered
+            answers[question.key.split(".")[-1]] = _as_toml(question.key.split(".")[-1], answer)
+
+
+def _answer(
+    content: FileContents, statement: InputStatement, question: Question, ask: Ask
+) -> tuple[str, InputStatement] | None:
+    """An answer that the file can take, and the statement with it; asked again until it is one, or left open."""
+    section, name = question.key.split(".")
+    key, asked = key_table()["input[]"][name], question
+    while (answer := ask(asked)) is not None:
+        try:
+            written = tomllib.loads(f"value = {_as_toml(name, answer)}")["value"]
+            stated = replace(statement, **{name: read_value(written, key, name, Path())})
+            inspection_of(content, stated, section)
+        except (CaseError, tomllib.TOMLDecodeError) as error:
+            asked = replace(question, text=f"{error}. {question.text}")
+        else:
+            return answer, stated
+    return None
+
+
+def _as_toml(name: str, answer: str) -> str:
+    """An answer as it stands in the file: text in quotes, a table without."""
+    return answer if key_table()["input[]"][name].kind == "class values" else _toml(answer)
+
+
+def _open_lines(question: Question) -> list[str]:
+    """One commented line per candidate."""
     key = question.key.split(".")[-1]
-    if answer:
-        return [f"{key} = {_toml(answer)}"]
     lines = [f"# {question.text}"]
     evidence = question.evidence or ("",) * len(question.candidates)
     for candidate, why in zip(question.candidates, evidence, strict=True):
-        lines.append(f"# CHOOSE: {key} = {_toml(candidate)}" + (f"      # {why}" if why else ""))
+        lines.append(f"# CHOOSE: {key} = {_as_toml(key, candidate)}" + (f"      # {why}" if why else ""))
     return lines if question.candidates else [*lines, f"# CHOOSE: {key} = "]
 
 

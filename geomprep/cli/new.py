@@ -35,9 +35,9 @@ def _ask(question: Question) -> str | None:
         f"  {number}  {one}  {why}"
         for number, (one, why) in enumerate(zip(question.candidates, evidence, strict=True), 1)
     ]
-    sys.stdout.write("\n".join(["", question.text, *lines, "number, or Enter to leave it open: "]))
+    sys.stdout.write("\n".join(["", question.text, *lines, "number or answer, or Enter to leave it open: "]))
     sys.stdout.flush()
     answer = sys.stdin.readline().strip()
     if answer.isdigit() and 1 <= int(answer) <= len(question.candidates):
         return question.candidates[int(answer) - 1]
-    return None
+    return answer or None
