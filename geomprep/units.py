@@ -117,7 +117,7 @@ _SYMBOLS: Final[dict[str, tuple[float, Dimension]]] = {
 LENGTH_UNITS: Final = tuple(symbol for symbol, (_, dimension) in _SYMBOLS.items() if dimension == (1, 0, 0))
 """Symbols accepted as the length unit of a file."""
 
-_TERM = re.compile(r"(%|1|[A-Za-zµ]+(?:H2O)?)(?:\^?(-?\d+))?")
+_TERM = re.compile(r"(%|1|[A-Za-zµ]+(?:H2O)?)(?:\^?(-?\d))?")
 _QUANTITY = re.compile(r"\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s*(.*?)\s*", re.DOTALL)
 
 

@@ -86,7 +86,7 @@ def read_case(path: str | Path) -> Case:
         reading.faults.extend(contradictions(case))
         if not reading.faults:
             return case
-    raise CaseError(f"{file.name}: {_numbered(reading.faults)}")
+    raise CaseError(_one_line(f"{file.name}: {_numbered(reading.faults)}"))
 
 
 def _bytes(file: Path) -> bytes:
@@ -99,6 +99,8 @@ def _bytes(file: Path) -> bytes:
         raise CaseError(f"{file}: a folder; give the case file in it") from None
     except OSError as error:
         raise CaseError(f"{file}: cannot be read ({error.strerror})") from None
+    except ValueError as error:  # a name that no system takes
+        raise CaseError(_one_line(f"{file}: cannot be read ({error})")) from None
 
 
 def _document(data: bytes, file: Path) -> dict[str, Any]:
@@ -114,7 +116,12 @@ def _document(data: bytes, file: Path) -> dict[str, Any]:
         if place:
             line = int(place[1]) if place[1] else line
             fault = fault.replace(place[0], "")
-        raise CaseError(f"{file.name}, line {line}: no valid TOML: {' '.join(fault.split())}") from None
+        raise CaseError(_one_line(f"{file.name}, line {line}: no valid TOML: {fault}")) from None
+
+
+def _one_line(message: str) -> str:
+    """A message without line ends and other signs that do not print, whatever the file holds."""
+    return "".join(sign if sign.isprintable() else "�" for sign in " ".join(message.split()))
 
 
 def _numbered(faults: list[str]) -> str:

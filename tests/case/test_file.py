@@ -1,8 +1,11 @@
 """Reading a case file: what it says in SI, and one line for everything that is wrong with it."""
 
 import dataclasses
+import json
 
 import pytest
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
 
 from geomprep.case.file import _RECORDS, read_case
 from geomprep.case.keys import key_table
@@ -242,3 +245,39 @@ def test_examples_of_the_table_can_be_read(key, tmp_path):
     value = tomllib.loads(f"x = {key.example}" if bare else f'x = "{key.example}"')["x"]
     read_value(value, key, key.key, tmp_path)
     assert key.description.endswith(".")
+
+
+@settings(
+    max_examples=150, derandomize=True, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture]
+)
+@given(data=st.data())
+def test_whatever_stands_in_a_case_it_is_read_or_refused_in_one_line(write, data):
+    """Values of every TOML kind, odd text among them, at every key."""
+    keys = [key for keys in key_table().values() for key in keys.values()]
+    odd = st.one_of(
+        st.text(max_size=12),
+        st.sampled_from(
+            [
+                "10 mmHg\n",
+                "1e999 mm",
+                "\x00",
+                "a" * 5000,
+                "1 kPa^9999",
+                "1 mm^-9999",
+                "1 m/mm^9999",
+                "--3 m",
+                "\x1b[31m",
+                "１ mm",
+                "1/0",
+            ]
+        ),
+    )
+    value = st.one_of(odd.map(json.dumps), st.sampled_from(["1" + "0" * 400, "-0.0", "nan", "[]", "{}", "1979-05-27"]))
+    key = data.draw(st.sampled_from(keys))
+    section = f"[[{key.section[:-2]}]]" if key.section.endswith("[]") else f"[{key.section.replace('*', 'x')}]"
+    path = write(SMALLEST + f"{section}\n{key.key} = {data.draw(value)}\n")
+    try:
+        read_case(path)
+    except CaseError as error:
+        assert str(error).isprintable()
+        assert str(error).startswith("case.toml")
