@@ -160,6 +160,7 @@ def _context(case: Case, drawn: Drawn, assigned: Assigned, findings: tuple[Findi
 
 _STEPS = (
     "read each file in a contained process and hold what the case states against its numbers",
+    "mend radii that are zero, negative, missing, spikes or decayed ends",
     "join points and lines within each vessel class",
     "split into segments between junctions and open ends",
     "turn segments along a linear flow from inlets to outlets",

@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, replace
 from pathlib import Path
-from typing import Any
+from typing import Any, TypeVar
 
 import numpy.typing as npt
 
@@ -20,13 +20,23 @@ from geomprep.files.meaning import to_centrelines
 from geomprep.findings import Finding
 from geomprep.measure import junctions, measure_segments
 from geomprep.model import Centrelines, Network, Repair, concatenate
-from geomprep.repair import PERSON, JoinResult, JoinSettings, Verdict, Verdicts, join
+from geomprep.repair import (
+    PERSON,
+    JoinResult,
+    JoinSettings,
+    RadiusSettings,
+    Verdict,
+    Verdicts,
+    join,
+    mend_radii,
+)
 from geomprep.segments import leave_out_unreached, order_segments, orient, resample, split
 from geomprep.units import length_factor
 
 __all__ = ["Drawn", "draw_network"]
 
 Progress = Callable[[str, float], None]
+Settings = TypeVar("Settings")
 
 
 @dataclass(frozen=True, eq=False)
@@ -125,7 +135,10 @@ def _joined(
     centrelines, findings = _centrelines(case, contents)
     del contents
     progress("join", 0.3)
-    return join(centrelines, join_settings(case), verdicts), records, findings
+    mended = mend_radii(centrelines, _stated(case.radius, RadiusSettings), verdicts)
+    del centrelines
+    joined = join(mended.centrelines, _stated(case.join, JoinSettings), verdicts)
+    return replace(joined, repairs=(*mended.repairs, *joined.repairs)), records, findings
 
 
 def _centrelines(case: Case, contents: list[FileContents]) -> tuple[Centrelines, tuple[Finding, ...]]:
@@ -169,10 +182,9 @@ def _input_records(case: Case, contents: list[FileContents]) -> tuple[InputRecor
     )
 
 
-def join_settings(case: Case) -> JoinSettings:
-    """Settings of the join step: what the case states, defaults for the rest."""
-    stated = {field.name: getattr(case.join, field.name) for field in fields(case.join)}
-    return JoinSettings(**{name: value for name, value in stated.items() if value is not None})
+def _stated(section: object, kind: type[Settings]) -> Settings:
+    """Settings of a step: what the case states, defaults for the rest."""
+    return kind(**{name: value for name, value in vars(section).items() if value is not None})
 
 
 def _resampled(case: Case, network: Network) -> Network:

@@ -18,6 +18,7 @@ __all__ = [
     "InputStatement",
     "JoinSection",
     "OutletSection",
+    "RadiusSection",
     "SegmentsSection",
     "StationSpacing",
     "SurroundingsSection",
@@ -53,6 +54,15 @@ class JoinSection:
     tolerance: float | None = None
     copies_within: float | None = None
     joints_within: float | None = None
+
+
+@dataclass(frozen=True)
+class RadiusSection:
+    """``[repair.radius]``: None leaves the default of the step."""
+
+    use: bool | None = None
+    spike_ratio: float | None = None
+    end_ratio: float | None = None
 
 
 @dataclass(frozen=True)
@@ -174,6 +184,7 @@ class Case:
     inputs: tuple[InputStatement, ...]
     imaging_state: ImagingStateSection
     join: JoinSection
+    radius: RadiusSection
     segments: SegmentsSection
     anatomy: AnatomySection
     walls: dict[str, WallsSection]

@@ -193,6 +193,13 @@ def _number_or_key(value: Any, key: Key, path: str, folder: Path) -> float | str
     return _text(value, key, path, folder)
 
 
+def _boolean(value: Any, key: Key, path: str, folder: Path) -> bool:
+    """True or false."""
+    if not isinstance(value, bool):
+        raise _fault(value, path, "must be true or false, without quotes")
+    return value
+
+
 def _class_values(value: Any, key: Key, path: str, folder: Path) -> tuple[float, float]:
     """The numbers that mean artery and vein."""
     given = value if isinstance(value, dict) else {}
@@ -206,6 +213,7 @@ def _class_values(value: Any, key: Key, path: str, folder: Path) -> tuple[float,
 _READERS: Final[dict[str, Callable[[Any, Key, str, Path], Any]]] = {
     "text": _text,
     "choice": _choice,
+    "boolean": _boolean,
     "file": _file,
     "names": _names,
     "frame": _frame,

@@ -1,0 +1,327 @@
+"""Radii that cannot be: zero, negative, missing, single spikes, and the decay of a distance map at open ends."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from geomprep.curves import arc_length, piece_integrals
+from geomprep.errors import InputError
+from geomprep.model import (
+    Basis,
+    BoolArray,
+    Centrelines,
+    Chains,
+    FloatArray,
+    IntArray,
+    Repair,
+    anchor_ids,
+    chains,
+    degrees,
+)
+from geomprep.repair.coincident import same_place
+from geomprep.repair.verdicts import Verdicts
+
+__all__ = ["RadiusResult", "RadiusSettings", "mend_radii"]
+
+_LEAVE, _MEND = "leave", "interpolate"
+_HALF_WINDOW = 3
+_LONGEST_SPIKE = 2
+_LONGEST_DECAY = 4
+_NEAR_END = 8
+
+
+@dataclass(frozen=True)
+class RadiusSettings:
+    """When a radius is mended.
+
+    Attributes
+    ----------
+    use : bool
+        False leaves every radius as it is.
+    spike_ratio : float
+        A point, or two side by side, whose radius differs by this factor from the median around it is a spike.
+    end_ratio : float
+        Points at an open end whose radius lies below this part of the radius further in have decayed.
+
+    Raises
+    ------
+    InputError
+        A value lies outside its range.
+    """
+
+    use: bool = True
+    spike_ratio: float = 1.5
+    end_ratio: float = 0.6
+
+    def __post_init__(self) -> None:
+        """Refuse values outside their range."""
+        if not 1.1 <= self.spike_ratio <= 10.0:
+            raise InputError(f"repair.radius.spike_ratio = {self.spike_ratio:g}: must be between 1.1 and 10")
+        if not 0.0 <= self.end_ratio < 0.95:
+            raise InputError(f"repair.radius.end_ratio = {self.end_ratio:g}: must be at least 0 and below 0.95")
+
+
+@dataclass(frozen=True)
+class RadiusResult:
+    """Centrelines with mended radii, and the record of each."""
+
+    centrelines: Centrelines
+    repairs: tuple[Repair, ...]
+
+
+@dataclass(frozen=True, eq=False)
+class _Profile:
+    """ln r along all chains; NaN where the radius is none."""
+
+    cut: Chains
+    points: FloatArray
+    log_radius: FloatArray
+    along: FloatArray
+    chain: IntArray
+    inner: BoolArray
+    open_start: BoolArray
+    open_end: BoolArray
+
+
+def mend_radii(centrelines: Centrelines, settings: RadiusSettings, verdicts: Verdicts) -> RadiusResult:
+    """Replace impossible radii by a local fit, before lines are joined.
+
+    Zero, negative and missing radii, spikes of one or two points and the decay at open ends take the value that ln r has
+    between the good points beside them (at an end: the nearest good value). A narrowing or widening of three
+    points or more is left as it is. A chain without any good radius stays as it is, and joining refuses it.
+
+    Parameters
+    ----------
+    centrelines : Centrelines
+    settings : RadiusSettings
+    verdicts : Verdicts
+        Recorded choices; a spike or a decayed end may be left.
+
+    Returns
+    -------
+    RadiusResult
+        The same centrelines where nothing was mended; the original values stay in the file.
+    """
+    if not settings.use or centrelines.line_radius is not None:
+        return RadiusResult(centrelines, ())
+    used = np.unique(centrelines.connectivity)
+    label, first = same_place(centrelines.points[used])
+    value = _log_radius(centrelines.radius[used], label, len(first))
+    edges = _edges(centrelines, used, label)
+    suspicious = np.isnan(value).any() or _has_steps(value, edges, settings)
+    if not suspicious:
+        return RadiusResult(centrelines, ())
+    profile = _profile(centrelines.points[used[first]], value, edges)
+    kinds = _kinds(profile, settings)
+    fitted = _fitted(profile, kinds > 0)
+    repairs, mended = _records(centrelines, profile, (kinds, fitted), used[first], verdicts)
+    return RadiusResult(_with_radii(centrelines, profile, (fitted, mended), (used, label)), repairs)
+
+
+def _log_radius(radius: FloatArray, label: IntArray, count: int) -> FloatArray:
+    """Mean ln r of the good radii stated at each place; NaN where none is good."""
+    good = (radius > 0) & (radius < np.inf)
+    total = np.bincount(label[good], np.log(radius[good]), count)
+    number = np.bincount(label[good], minlength=count)
+    value: FloatArray = np.divide(total, number, out=np.full(count, np.nan), where=number > 0)
+    return value
+
+
+def _edges(centrelines: Centrelines, used: IntArray, label: IntArray) -> IntArray:
+    """Places at both ends of every step, each pair once."""
+    place = label[np.searchsorted(used, centrelines.connectivity)]
+    inner = np.ones(len(place), np.bool_)
+    inner[centrelines.offsets[1:] - 1] = False
+    start = np.flatnonzero(inner)
+    pairs = np.sort(np.stack((place[start], place[start + 1]), axis=1), axis=1)
+    pairs = pairs[pairs[:, 0] != pairs[:, 1]]
+    keys = pairs[:, 0] * np.int64(len(label) + 1) + pairs[:, 1]
+    kept: IntArray = pairs[np.unique(keys, return_index=True)[1]]
+    return kept
+
+
+def _has_steps(value: FloatArray, edges: IntArray, settings: RadiusSettings) -> bool:
+    """Whether any step is steep enough to be looked at."""
+    step = np.abs(value[edges[:, 0]] - value[edges[:, 1]])
+    return bool((step > min(np.log(settings.spike_ratio), -np.log(max(settings.end_ratio, 1e-6)))).any())
+
+
+def _profile(points: FloatArray, value: FloatArray, edges: IntArray) -> _Profile:
+    """Chains of places with ln r and arc length along them."""
+    cut = chains(len(points), edges)
+    degree = degrees(len(points), edges)
+    first, last = cut.offsets[:-1], cut.offsets[1:] - 1
+    inner = np.ones(len(cut.point), np.bool_)
+    inner[first] = inner[last] = False
+    open_start, open_end = (degree[cut.point[rows]] == 1 for rows in (first, last))
+    chain = np.repeat(np.arange(cut.n_chains), np.diff(cut.offsets))
+    place = points[cut.point]
+    return _Profile(cut, place, value[cut.point], arc_length(place, cut.offsets), chain, inner, open_start, open_end)
+
+
+_NOTHING, _IMPOSSIBLE, _SPIKE, _DECAY = range(4)
+_WORDS = {_IMPOSSIBLE: "impossible radius", _SPIKE: "radius spike", _DECAY: "decayed end"}
+
+
+def _kinds(profile: _Profile, settings: RadiusSettings) -> IntArray:
+    """What is wrong at each row, 0 where nothing is."""
+    kinds = np.where(np.isnan(profile.log_radius), _IMPOSSIBLE, _NOTHING)
+    if settings.end_ratio > 0:
+        kinds[_decays(profile, -np.log(settings.end_ratio)) & (kinds == _NOTHING)] = _DECAY
+    kinds[_spikes(profile, np.log(settings.spike_ratio)) & (kinds == _NOTHING)] = _SPIKE
+    return kinds
+
+
+def _spikes(profile: _Profile, limit: float) -> BoolArray:
+    """Rows whose ln r lies far from the median around them, no more than two side by side."""
+    log_radius = profile.log_radius
+    steep = np.zeros(len(log_radius), np.bool_)
+    with np.errstate(invalid="ignore"):
+        step = np.abs(np.diff(log_radius)) > 0.5 * limit
+    steep[1:] |= step
+    steep[:-1] |= step
+    rows = np.flatnonzero(steep & profile.inner & ~np.isnan(log_radius))
+    around = rows[:, None] + np.arange(-_HALF_WINDOW, _HALF_WINDOW + 1)
+    inside = np.clip(around, 0, len(log_radius) - 1)
+    usable = (inside == around) & (profile.chain[inside] == profile.chain[rows][:, None]) & profile.inner[inside]
+    window = np.where(usable, log_radius[inside], np.nan)
+    enough = np.count_nonzero(~np.isnan(window), axis=1) >= 4
+    rows, window = rows[enough], window[enough]
+    middle = np.nanmedian(window, axis=1) if len(rows) else np.zeros(0)
+    spread = np.nanmedian(np.abs(window - middle[:, None]), axis=1) if len(rows) else np.zeros(0)
+    far = np.abs(log_radius[rows] - middle) > np.maximum(limit, 5 * 1.4826 * spread)
+    found = np.zeros(len(log_radius), np.bool_)
+    found[rows[far]] = True
+    return _short_runs(found, profile.chain)
+
+
+def _short_runs(found: BoolArray, chain: IntArray) -> BoolArray:
+    """Drop what stands longer side by side than a spike: it may be a vessel."""
+    starts = found & ~np.concatenate(([False], found[:-1] & (chain[1:] == chain[:-1])))
+    number = np.cumsum(starts) - 1
+    length = np.bincount(number[found], minlength=max(int(number.max(initial=-1)) + 1, 0))
+    kept = found.copy()
+    kept[found] = length[number[found]] <= _LONGEST_SPIKE
+    return kept
+
+
+def _decays(profile: _Profile, limit: float) -> BoolArray:
+    """Rows at open ends that lie below the radius further in, from the end inwards."""
+    found = np.zeros(len(profile.log_radius), np.bool_)
+    offsets = profile.cut.offsets
+    for chain in np.flatnonzero((profile.open_start | profile.open_end) & (np.diff(offsets) >= _NEAR_END)).tolist():
+        rows = np.arange(offsets[chain], offsets[chain + 1])
+        for is_open, way in ((profile.open_start[chain], rows), (profile.open_end[chain], rows[::-1])):
+            if is_open:
+                further = profile.log_radius[way[_LONGEST_DECAY : 2 * _LONGEST_DECAY + 1]]
+                level = np.nanmedian(further) if np.isfinite(further).any() else -np.inf
+                low = profile.log_radius[way[:_LONGEST_DECAY]] < level - limit
+                found[way[: int(np.argmin(np.append(low, False)))]] = True
+    return found
+
+
+def _fitted(profile: _Profile, wrong: BoolArray) -> FloatArray:
+    """Ln r at each row from the good rows of its chain, linear in arc length; NaN where a chain has none."""
+    count = len(wrong)
+    rows = np.arange(count)
+    before = np.maximum.accumulate(np.where(wrong, -1, rows))
+    after = np.minimum.accumulate(np.where(wrong, count, rows)[::-1])[::-1]
+    has_before = (before >= 0) & (profile.chain[np.maximum(before, 0)] == profile.chain)
+    has_after = (after < count) & (profile.chain[np.minimum(after, count - 1)] == profile.chain)
+    low = np.where(has_before, before, np.where(has_after, after, rows))
+    high = np.where(has_after, after, low)
+    gap = profile.along[high] - profile.along[low]
+    part = np.where(gap > 0, (profile.along - profile.along[low]) / np.where(gap > 0, gap, 1.0), 0.0)
+    value: FloatArray = profile.log_radius[low] * (1 - part) + profile.log_radius[high] * part
+    value[~has_before & ~has_after] = np.nan
+    return value
+
+
+def _records(
+    centrelines: Centrelines,
+    profile: _Profile,
+    found: tuple[IntArray, FloatArray],
+    raw_of_place: IntArray,
+    verdicts: Verdicts,
+) -> tuple[tuple[Repair, ...], BoolArray]:
+    """One repair per run of rows with one fault, and the rows that are mended."""
+    kinds, fitted = found
+    same = (kinds[1:] == kinds[:-1]) & (profile.chain[1:] == profile.chain[:-1])
+    starts = np.flatnonzero((kinds > 0) & ~np.concatenate(([False], same)))
+    ends = np.flatnonzero((kinds > 0) & ~np.concatenate((same, [False]))) + 1
+    mended = np.zeros(len(kinds), np.bool_)
+    anchors = raw_of_place[profile.cut.point[np.stack((starts, ends - 1), axis=1)]]
+    ids = anchor_ids("radius", centrelines.raw_points, anchors)
+    repairs = []
+    for name, start, end in zip(ids.tolist(), starts.tolist(), ends.tolist(), strict=True):
+        rows = np.arange(start, end)
+        if np.isnan(fitted[rows]).any():
+            continue  # no good radius on this chain: joining names the points
+        repair = _record(profile, (name, int(kinds[start]), rows), fitted, verdicts)
+        mended[rows] = repair.choice == _MEND
+        repairs.append(repair)
+    return tuple(repairs), mended
+
+
+def _record(
+    profile: _Profile,
+    what: tuple[str, int, IntArray],
+    fitted: FloatArray,
+    verdicts: Verdicts,
+) -> Repair:
+    """The repair of one run of rows."""
+    name, kind, rows = what
+    options = (_MEND,) if kind == _IMPOSSIBLE else (_LEAVE, _MEND)
+    verdict = verdicts.settle(name, options, _MEND)
+    span = np.arange(max(int(rows[0]) - 1, 0), min(int(rows[-1]) + 2, len(fitted)))
+    span = span[profile.chain[span] == profile.chain[rows[0]]]
+    new = np.where(np.isin(span, rows), fitted[span], profile.log_radius[span])
+    before = 0.0 if kind == _IMPOSSIBLE else _conductance(profile.along[span], profile.log_radius[span])
+    after = _conductance(profile.along[span], new)
+    said = "none above zero" if kind == _IMPOSSIBLE else f"{1e3 * np.exp(profile.log_radius[rows]).mean():.3g} mm"
+    x, y, z = profile.points[rows[0]].tolist()
+    return Repair(
+        id=name,
+        kind=_WORDS[kind],
+        reason=f"{len(rows)} point(s) state a radius of {said}; the good points beside them give "
+        f"{1e3 * np.exp(fitted[rows]).mean():.3g} mm",
+        position=(x, y, z),
+        choice=verdict.choice,
+        options=options,
+        verdict_by=verdict.by,
+        conductance_before=before,
+        conductance_after=after if verdict.choice == _MEND else before,
+    )
+
+
+def _conductance(along: FloatArray, log_radius: FloatArray) -> float:
+    """Conductance of a stretch at unit viscosity; 0 where a radius is none or the stretch has no length."""
+    radius = np.exp(log_radius)
+    if np.isnan(radius).any() or along[-1] <= along[0]:
+        return 0.0
+    resistance = piece_integrals(np.diff(along), radius[:-1], radius[1:])[:, 3].sum()
+    return float(np.pi / 8.0 / resistance)
+
+
+def _with_radii(
+    centrelines: Centrelines, profile: _Profile, found: tuple[FloatArray, BoolArray], places: tuple[IntArray, IntArray]
+) -> Centrelines:
+    """The centrelines with the mended radii in all points of each place; a place on several chains takes their mean."""
+    (fitted, mended), (used, label) = found, places
+    count = int(label.max()) + 1
+    at = profile.cut.point[mended]
+    number = np.bincount(at, minlength=count)
+    mean = np.bincount(at, fitted[mended], count) / np.maximum(number, 1)
+    radius, basis = centrelines.radius.copy(), centrelines.radius_basis.copy()
+    changed = number[label] > 0
+    radius[used[changed]] = np.exp(mean[label[changed]])
+    basis[used[changed]] = Basis.INTERPOLATED
+    # a place with one good statement keeps it for those of its points that state none
+    stated = radius[used]
+    value = _log_radius(stated, label, count)[label]
+    lost = ~((stated > 0) & (stated < np.inf)) & ~changed & ~np.isnan(value)
+    radius[used[lost]] = np.exp(value[lost])
+    basis[used[lost]] = Basis.INTERPOLATED
+    return replace(centrelines, radius=radius, radius_basis=basis)
