@@ -191,7 +191,7 @@ def _summaries(contents: FileContents, checked: Gate | None) -> tuple[ArraySumma
 def _line_findings(contents: FileContents, ends: OpenEnds) -> list[Finding]:
     """Oddities of points and lines."""
     found = []
-    unused = contents.n_points - len(np.unique(contents.connectivity))
+    unused = int((np.bincount(contents.connectivity, minlength=contents.n_points) == 0).sum())
     if unused:
         found.append(Finding("unused points", Severity.NOTE, f"{unused} points lie on no line and are not used"))
     if ends.n_zero_steps:

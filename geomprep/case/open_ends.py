@@ -3,8 +3,10 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
+import numpy.typing as npt
 from scipy.sparse import coo_array
 from scipy.sparse.csgraph import connected_components
 
@@ -57,13 +59,14 @@ def find_open_ends(contents: FileContents) -> OpenEnds:
     """
     points = np.asarray(contents.points)
     first, second = _steps(contents)
-    lengths: FloatArray = np.sqrt(((points[second].astype(float) - points[first]) ** 2).sum(axis=1))
-    _, representative, place = np.unique(points + 0.0, axis=0, return_index=True, return_inverse=True)
-    place = place.reshape(-1)
-    pairs = np.sort(np.stack((place[first], place[second]), axis=1), axis=1)
-    pairs = np.unique(pairs[pairs[:, 0] != pairs[:, 1]], axis=0)
+    lengths: FloatArray = np.linalg.norm(points[second].astype(float) - points[first], axis=1)
+    place, representative = _places(points)
+    low, high = np.minimum(place[first], place[second]), np.maximum(place[first], place[second])
+    once = np.sort((low * len(points) + high)[low != high])
+    once = once[np.diff(once, prepend=-1) > 0]
+    pairs = np.stack((once // len(points), once % len(points)), axis=1)
     degree = np.bincount(pairs.ravel(), minlength=len(representative))
-    used = np.unique(place[contents.connectivity])
+    used = np.flatnonzero(np.bincount(place[contents.connectivity], minlength=len(representative)))
     parts, label = connected_components(
         coo_array((np.ones(len(pairs)), (pairs[:, 0], pairs[:, 1])), shape=(len(degree),) * 2), directed=False
     )
@@ -77,6 +80,17 @@ def find_open_ends(contents: FileContents) -> OpenEnds:
         n_zero_steps=int((lengths == 0).sum()),
         total_length=float(lengths.sum()),
     )
+
+
+def _places(points: npt.NDArray[Any]) -> tuple[IntArray, IntArray]:
+    """Number of the place of every point, and the first point at every place."""
+    order = np.lexsort((points[:, 2], points[:, 1], points[:, 0]))
+    ordered = points[order]
+    fresh = np.ones(len(points), dtype=bool)
+    fresh[1:] = (ordered[1:] != ordered[:-1]).any(axis=1)
+    place = np.empty(len(points), dtype=np.int64)
+    place[order] = np.cumsum(fresh) - 1
+    return place, order[fresh].astype(np.int64)
 
 
 def _steps(contents: FileContents) -> tuple[IntArray, IntArray]:

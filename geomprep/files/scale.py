@@ -187,7 +187,8 @@ def _drawn(contents: FileContents, size: SizeArray) -> _Drawn:
     inner = offsets[1:-1]
     inside[inner[(inner > 0) & (inner < len(connectivity))] - 1] = False
     first, second = connectivity[:-1][inside], connectivity[1:][inside]
-    steps = np.sqrt(((points[second] - points[first]) ** 2).sum(axis=1))
+    along_step = points[second] - points[first]
+    steps = np.sqrt(np.einsum("ij,ij->i", along_step, along_step))
     values = np.asarray(size.values, dtype=np.float64)
     if size.place == "points":
         along = 0.5 * (values[first] + values[second])
@@ -195,10 +196,10 @@ def _drawn(contents: FileContents, size: SizeArray) -> _Drawn:
     else:
         along = np.repeat(values, np.maximum(np.diff(offsets) - 1, 0))
         square = along**2
-    used = points[connectivity]
+    used = points[connectivity].T
     moved = steps[steps > 0]
     return _Drawn(
-        diagonal=float(np.sqrt(((used.max(axis=0) - used.min(axis=0)) ** 2).sum())),
+        diagonal=float(np.linalg.norm([float(np.ptp(column)) for column in used])),
         length=float(steps.sum()),
         step=float(np.median(moved)) if moved.size else 0.0,
         squares=float(np.nansum(square * steps)),
