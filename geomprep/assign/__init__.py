@@ -10,7 +10,12 @@ from geomprep.assign.lumped import imaged_wave_speed, lump
 from geomprep.assign.outlet_models import OUTLET_MODELS
 from geomprep.assign.outlets import OutletResult, assign_outlets
 from geomprep.assign.splits import SPLIT_RULES
-from geomprep.assign.surroundings import StationSurroundings, SurroundingsSettings, station_surroundings
+from geomprep.assign.surroundings import (
+    StationSurroundings,
+    SurroundingsSettings,
+    station_surroundings,
+    surroundings_at_imaging,
+)
 from geomprep.assign.walls import WallSettings, assign_walls
 
 __all__ = [
@@ -40,5 +45,6 @@ __all__ = [
     "lump",
     "resolve_ends",
     "station_surroundings",
+    "surroundings_at_imaging",
     "with_heights",
 ]

@@ -7,15 +7,18 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from geomprep.assign.end_settings import OutletSettings
+from geomprep.assign.calibration import calibrate
+from geomprep.assign.end_settings import CalibrationSettings, OutletSettings
 from geomprep.assign.ends import Ends
 from geomprep.assign.gravity import Gravity, heights
-from geomprep.assign.losses import segment_resistance
+from geomprep.assign.labels import end_segment
+from geomprep.assign.losses import blood_column, solve_imaged
+from geomprep.assign.origins import origins_by_rows
+from geomprep.assign.outlets import completed_entries, far_pressures, stated_totals
 from geomprep.curves import resistance_share
-from geomprep.errors import ModelError, OpenQuestions, Question
-from geomprep.model import VESSEL_CLASSES, Basis, FloatArray, Network, Origin
-from geomprep.solve import Boundary, solve_between
-from geomprep.units import STANDARD_GRAVITY
+from geomprep.errors import OpenQuestions, Question
+from geomprep.model import VESSEL_CLASSES, Basis, BoolArray, FloatArray, IntArray, Network, Origin, end_arrays
+from geomprep.solve import Boundary
 
 __all__ = ["ImagingPressures", "ImagingResult", "imaging_transmural"]
 
@@ -53,12 +56,15 @@ def imaging_transmural(
     pressures: ImagingPressures,
     field: Gravity,
     external: FloatArray,
+    calibration: CalibrationSettings | None = None,
 ) -> ImagingResult:
     """Find the transmural pressure of every station while the image was taken.
 
-    Arteries stand at the stated mean pressure, at the height 0, and the column of blood is taken
-    off above it; veins at a stated pressure in the same way, or at the pressures of a linear steady solve on the
-    imaged areas between the inlets and the pressures behind the outlets.
+    The stated mean pressure of arteries (and of vessels of unknown class) holds at the height of
+    their first inlet, a stated pressure of veins at the height of their first outlet; elsewhere
+    the column of blood between is counted. So the result does not depend on where the
+    coordinates have their origin. Veins without a stated pressure take that of a linear steady solve on the imaged
+    areas, between the inlets and what stands behind the outlets.
 
     Parameters
     ----------
@@ -72,6 +78,10 @@ def imaging_transmural(
         Gravity in the posture of the image.
     external : (k,) float array
         Pressure outside each station, Pa.
+    calibration : CalibrationSettings, optional
+        Finds outlet resistances for the steady solve where outlets state none. A windkessel that
+        states only its peripheral resistance is solved without the first one, which the
+        walls are yet to give.
 
     Returns
     -------
@@ -81,74 +91,79 @@ def imaging_transmural(
     ------
     OpenQuestions
         There are arteries and no arterial pressure is stated.
+    CaseError
+        An outlet lacks what the steady solve needs.
     ModelError
-        A part with veins reaches no pressure.
+        A part with veins reaches no pressure, or the geometry cannot carry the flow.
     """
     vein = (network.segments.vessel_class == VESSEL_CLASSES.index("vein"))[network.stations.segment]
     if pressures.arterial is None and not vein.all():
         text = "at which mean pressure were the arteries imaged? Their areas belong to it"
         raise OpenQuestions([Question("imaging_state.arterial_pressure", text)])
-    weight = _weight(network)
-    height = heights(field, network.stations.position)
-    inside = np.full(len(network.stations), pressures.arterial or 0.0) - weight * height
-    parts = ["arteries: the stated mean pressure less the column of blood above height 0"] if not vein.all() else []
-    key = "imaging_state.arterial_pressure"
-    if vein.any():
-        if pressures.venous is not None:
-            inside[vein] = pressures.venous - weight * height[vein]
-            parts.append("veins: the stated pressure less the column of blood above height 0")
-            key = "imaging_state.venous_pressure"
-        else:
-            inside[vein] = _steady_pressure(network, ends, outlets, height)[vein]
-            parts.append("veins: a linear steady solve on the imaged areas in the posture of the image")
-    return ImagingResult(inside - external, "; ".join(parts), _origins(vein.all(), pressures, key))
+    inside = np.zeros(len(network.stations))
+    said: list[str] = []
+    rows: list[tuple[Basis, str, BoolArray]] = []
+    if pressures.arterial is not None and not vein.all():
+        inside[~vein] = _standing(network, ends.inlet_nodes, field, pressures.arterial, ~vein)
+        said.append("arteries: the stated mean pressure at the height of their first inlet, with the column of blood")
+        rows.append((Basis.DERIVED, f"imaging_state.arterial_pressure, {_ALWAYS}", ~vein))
+    if vein.any() and pressures.venous is not None:
+        inside[vein] = _standing(network, ends.outlet_nodes, field, pressures.venous, vein)
+        said.append("veins: the stated pressure at the height of their first outlet, with the column of blood")
+        rows.append((Basis.DERIVED, f"imaging_state.venous_pressure, {_ALWAYS}", vein))
+    elif vein.any():
+        inside[vein] = _steady_pressure(network, ends, outlets, field, calibration)[vein]
+        said.append("veins: a linear steady solve on the imaged areas in the posture of the image")
+        rows.append((Basis.DERIVED, f"{_SOLVED}, {_ALWAYS}", vein))
+    return ImagingResult(inside - external, "; ".join(said), origins_by_rows("stations.imaging_transmural", rows))
 
 
-def _origins(all_veins: bool, pressures: ImagingPressures, key: str) -> tuple[Origin, ...]:
-    """Basis of the transmural pressure at imaging."""
-    if all_veins and pressures.venous is None:
-        solved = "segments.integrals.inverse_fourth_power, inlets.mean_flow, outlets.far_pressure"
-        detail = f"{solved}, nodes.height, surroundings.pressure"
-    else:
-        detail = f"{key}, nodes.height, surroundings.pressure"
-    return (Origin("stations.imaging_transmural", Basis.DERIVED, detail),)
+_ALWAYS = "stations.position, blood.density, surroundings.pressure"
+_SOLVED = "segments.integrals.inverse_fourth_power, blood.viscosity, inlets.mean_flow, outlets.far_pressure"
 
 
-def _weight(network: Network) -> float:
-    """ρ g of blood, Pa per metre of height."""
-    if network.blood is None:
-        raise ModelError("the pressure at imaging needs the density of blood; assign blood first")
-    return network.blood.density * STANDARD_GRAVITY
+def _standing(network: Network, nodes: IntArray, field: Gravity, pressure: float, here: BoolArray) -> FloatArray:
+    """Pressure of some stations in a standing column that has a pressure at the first of these nodes among them."""
+    station = end_segment(network, nodes)[1]
+    own = station[here[station]]
+    reference = own[0] if own.size else np.flatnonzero(here)[0]
+    column = blood_column(network, heights(field, network.stations.position))
+    return np.asarray(pressure - (column[here] - column[reference]), dtype=np.float64)
 
 
-def _steady_pressure(network: Network, ends: Ends, outlets: Sequence[OutletSettings], height: FloatArray) -> FloatArray:
+def _steady_pressure(
+    network: Network,
+    ends: Ends,
+    outlets: Sequence[OutletSettings],
+    field: Gravity,
+    calibration: CalibrationSettings | None,
+) -> FloatArray:
     """Static pressure at every station from a linear solve on the imaged areas."""
-    segments, weight = network.segments, _weight(network)
-    column = weight * network.nodes.height
-    boundary = _boundary(network, ends, [outlets[entry] for entry in ends.outlet_entries.tolist()], column)
-    conductance = 1.0 / segment_resistance(network)
-    head = solve_between(len(network.nodes), segments.from_node, segments.to_node, conductance, boundary).head
+    head = solve_imaged(network, _boundary(network, ends, outlets, calibration)).head
     stations, owner = network.stations, network.stations.segment
     part = resistance_share(stations.distance, stations.radius, stations.offsets)
-    start, end = head[segments.from_node][owner], head[segments.to_node][owner]
-    pressure: FloatArray = start + (end - start) * part - weight * height
-    return pressure
+    start, end = head[network.segments.from_node][owner], head[network.segments.to_node][owner]
+    column = blood_column(network, heights(field, stations.position))
+    return np.asarray(start + (end - start) * part - column, dtype=np.float64)
 
 
-def _boundary(network: Network, ends: Ends, entries: list[OutletSettings], column: FloatArray) -> Boundary:
+def _boundary(
+    network: Network, ends: Ends, outlets: Sequence[OutletSettings], calibration: CalibrationSettings | None
+) -> Boundary:
     """Ends at imaging: inlets as they are, outlets at their pressure or behind their resistance."""
-    inlets = network.inlets or ()
-    flow = [np.nan if inlet.mean_flow is None else inlet.mean_flow for inlet in inlets]
-    pressure = [0.0 if inlet.pressure is None else inlet.pressure for inlet in inlets]
-    far = [entry.pressure if entry.pressure is not None else entry.far_pressure or 0.0 for entry in entries]
-    resistance = [
-        entry.resistance or (entry.characteristic_resistance or 0.0) + (entry.peripheral_resistance or 0.0)
-        for entry in entries
-    ]
-    node = np.concatenate((ends.inlet_nodes, ends.outlet_nodes))
+    target = calibration or CalibrationSettings()
+    entries = completed_entries(ends, outlets, target)
+    far = far_pressures(entries)
+    first = np.array([entry.characteristic_resistance or 0.0 for entry in entries], dtype=np.float64)
+    total = stated_totals(entries, first)
+    if np.isnan(total).any():
+        found = calibrate(network, ends, entries, target, (far, total))
+        total[found.rows] = found.resistance
+    node, inflow, pressure, resistance = end_arrays(network.inlets or (), ())
+    node = np.concatenate((node, ends.outlet_nodes))
     return Boundary(
         node=node,
-        inflow=np.array([*flow, *(np.nan for _ in entries)], dtype=np.float64),
-        head=np.array([*pressure, *far], dtype=np.float64) + column[node],
-        resistance=np.array([*(0.0 for _ in inlets), *resistance], dtype=np.float64),
+        inflow=np.concatenate((inflow, np.full(len(total), np.nan))),
+        head=np.concatenate((pressure, far)) + blood_column(network, network.nodes.height)[node],
+        resistance=np.concatenate((resistance, total)),
     )

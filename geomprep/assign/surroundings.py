@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import difflib
 from collections.abc import Collection, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Final
 
 import numpy as np
@@ -16,10 +16,20 @@ from geomprep.findings import Finding, Severity
 from geomprep.model import VESSEL_CLASSES, Basis, BoolArray, FloatArray, IntArray, Network, Origin, Surroundings
 from geomprep.units import STANDARD_GRAVITY
 
-__all__ = ["ATMOSPHERE_SOURCE", "StationSurroundings", "SurroundingsSettings", "station_surroundings"]
+__all__ = [
+    "ATMOSPHERE_SOURCE",
+    "CRANIUM",
+    "StationSurroundings",
+    "SurroundingsSettings",
+    "station_surroundings",
+    "surroundings_at_imaging",
+]
 
 ATMOSPHERE_SOURCE: Final = "gauge-pressure-atmosphere"
 """Key of the literature row for the zero of gauge pressure."""
+
+CRANIUM: Final = "cranium"
+"""Id of the surroundings whose pressure ``imaging_state.intracranial_pressure`` is."""
 
 _ATMOSPHERE: Final = "atmosphere"
 _CLASS_WORDS: Final = {"artery": "artery", "arteries": "artery", "vein": "vein", "veins": "vein"}
@@ -114,6 +124,45 @@ def station_surroundings(
         origins=_origins(found, settings),
         findings=_unused(ids, used) + _in_air(network, settings, open_air),
     )
+
+
+def surroundings_at_imaging(
+    settings: Mapping[str, SurroundingsSettings], intracranial_pressure: float | None
+) -> tuple[dict[str, SurroundingsSettings], tuple[Finding, ...]]:
+    """Return the surroundings as they were while imaged.
+
+    Parameters
+    ----------
+    settings : mapping of str to SurroundingsSettings
+        As modelled, by id.
+    intracranial_pressure : float, optional
+        Pressure in the cranium while imaged, Pa.
+
+    Returns
+    -------
+    settings : dict
+        The pressure of :data:`CRANIUM` replaced where one is stated.
+    findings : tuple of Finding
+        A warning where a pressure is stated and no vessel is said to lie in the cranium.
+
+    Examples
+    --------
+    >>> surroundings_at_imaging({"cranium": SurroundingsSettings(900.0)}, 1300.0)[0]["cranium"].pressure
+    1300.0
+    >>> len(surroundings_at_imaging({}, 1300.0)[1])
+    1
+    """
+    found = dict(settings)
+    if intracranial_pressure is None:
+        return found, ()
+    if CRANIUM in found:
+        found[CRANIUM] = replace(found[CRANIUM], pressure=intracranial_pressure)
+        return found, ()
+    message = (
+        "imaging_state.intracranial_pressure is stated, but there is no [surroundings.cranium] that says which "
+        "vessels lie inside: it presses on nothing."
+    )
+    return found, (Finding("intracranial pressure not used", Severity.WARNING, message),)
 
 
 def _record(name: str, one: SurroundingsSettings) -> Surroundings:

@@ -26,6 +26,7 @@ from geomprep.assign import (
     imaging_transmural,
     lump,
     station_surroundings,
+    surroundings_at_imaging,
     with_heights,
 )
 from geomprep.case.geometry import Drawn
@@ -92,7 +93,7 @@ def assign_parameters(case: Case, drawn: Drawn) -> Assigned:
         network,
         drawn.ends,
         _settings(case.outlets, OutletSettings),
-        None if case.calibration is None else CalibrationSettings(**dataclasses.asdict(case.calibration)),
+        _calibration(case),
         imaged_wave_speed(network),
     )
     findings += result.findings
@@ -104,16 +105,19 @@ def _walls(case: Case, drawn: Drawn, network: Network, findings: list[Finding]) 
     """Surroundings, pressure at imaging, tube laws and lumped values, in the posture of the image."""
     field = gravity(case.inputs[0].frame, _imaged_posture(case))
     at_imaging = with_heights(network, field)
-    outside = station_surroundings(
-        network, {name: _one(section, SurroundingsSettings) for name, section in case.surroundings.items()}, field
-    )
+    stated = {name: _one(section, SurroundingsSettings) for name, section in case.surroundings.items()}
+    while_imaged, seen = surroundings_at_imaging(stated, case.imaging_state.intracranial_pressure)
+    findings += seen
+    outside = station_surroundings(network, stated, field)
+    pressing = outside if while_imaged == stated else station_surroundings(network, while_imaged, field)
     imaged = imaging_transmural(
         at_imaging,
         drawn.ends,
         _settings(case.outlets, OutletSettings),
         ImagingPressures(case.imaging_state.venous_pressure, case.imaging_state.arterial_pressure),
         field,
-        outside.external_pressure,
+        pressing.external_pressure,
+        _calibration(case),
     )
     settings = {name: _one(section, WallSettings) for name, section in case.walls.items()}
     walls, wall_origins, seen = assign_walls(network, settings, imaged.transmural, outside.index)
@@ -122,6 +126,15 @@ def _walls(case: Case, drawn: Drawn, network: Network, findings: list[Finding]) 
     network = _with(network, (*wall_origins, *imaged.origins), walls=walls)
     lumped, lumped_origins = lump(network)
     return _with(network, lumped_origins, lumped=lumped), imaged
+
+
+def _calibration(case: Case) -> CalibrationSettings | None:
+    """Settings of the calibration; a far pressure that nobody stated is left to its stage."""
+    if case.calibration is None:
+        return None
+    settings = CalibrationSettings(**dataclasses.asdict(case.calibration))
+    stated = "calibration.far_pressure" in case.stated
+    return settings if stated else dataclasses.replace(settings, far_pressure=None)
 
 
 def _with(network: Network, origins: tuple[Origin, ...], **tables: object) -> Network:
