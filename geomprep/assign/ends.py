@@ -12,7 +12,7 @@ from typing import Protocol
 import numpy as np
 
 from geomprep.assign.labels import end_segment, node_label, open_ends
-from geomprep.errors import CaseError
+from geomprep.errors import CaseError, OpenQuestions, Question
 from geomprep.findings import Finding, Severity
 from geomprep.model import NODE_ROLES, FloatArray, IntArray, Network
 
@@ -22,6 +22,7 @@ EVERY_OTHER = "every other open end"
 """What ``at`` says for all open ends that no other entry names."""
 
 _NEAR_IN_RADII = 2.0
+_ASKED = 12  # open ends shown in a question
 _NUMBER = r"[+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?"
 _COORDINATES = re.compile(rf"\s*({_NUMBER})[\s,]+({_NUMBER})[\s,]+({_NUMBER})\s*")
 
@@ -180,10 +181,14 @@ def resolve_ends(
 
     Raises
     ------
+    OpenQuestions
+        There is no inlet or no outlet: nothing would flow. The open ends are listed.
     CaseError
         An entry names nothing, several nodes, or a node that another entry has; all
         faults are listed at once.
     """
+    if not inlets or not outlets:
+        raise OpenQuestions(_questions(network, bool(inlets), bool(outlets)))
     entries = [("inlets", row, inlet.at) for row, inlet in enumerate(inlets)]
     entries += [("outlets", row, outlet.at) for row, outlet in enumerate(outlets)]
     taken, faults = _single_nodes(network, entries, metres_per_unit)
@@ -201,6 +206,21 @@ def resolve_ends(
     findings = (*_none_left(wide, rest), *_left_open(network, left))
     named = _with_roles(network, inlet_nodes, outlet_nodes)
     return Ends(named, inlet_nodes, inlet_entries, outlet_nodes, outlet_entries, left, findings)
+
+
+def _questions(network: Network, has_inlets: bool, has_outlets: bool) -> list[Question]:
+    """Ask where blood enters or leaves, the widest open ends first."""
+    nodes = np.flatnonzero(open_ends(network))
+    radius = network.stations.radius[end_segment(network, nodes)[1]]
+    order = np.argsort(-radius, kind="stable")[:_ASKED].tolist()
+    candidates = tuple(node_label(network, int(nodes[row])) for row in order)
+    evidence = tuple(f"radius {1e3 * radius[row]:.3g} mm" for row in order)
+    asked = [("inlets", "enter"), ("outlets", "leave")]
+    return [
+        Question(f"{kind}[0].at", f"where does blood {verb}? The case has no [[{kind}]].", candidates, evidence)
+        for (kind, verb), has in zip(asked, (has_inlets, has_outlets), strict=True)
+        if not has
+    ]
 
 
 def _of_kind(pairs: list[tuple[str, int, int]], kind: str) -> tuple[IntArray, IntArray]:
