@@ -235,3 +235,21 @@ def test_one_entry_for_several_inlets_is_said(fork: Network) -> None:
     for wrong in (InletSettings(EVERY), InletSettings(EVERY, 1e-6, 900.0)):
         with pytest.raises(CaseError, match="either mean_flow or pressure"):
             assign_inlets(ends, [wrong])
+
+
+def test_share_of_a_total_compliance_of_a_published_example(fork: Network) -> None:
+    """C_i = C_per R_sys/R_i (Alastruey 2008, from memory), numbers derived from it.
+
+    5 L/min at 88 mmHg: R_sys = 1.40788e8 Pa·s/m³; τ = 1.5 s gives 1.065431e-8 m³/Pa, of which 0.4 lie in the outlets;
+    150 mL/min at 88 mmHg: R_i = 4.6929344e9 Pa·s/m³. Then C_i = 1.278518e-10 m³/Pa.
+    """
+    rest = 1 / (1 / 1.40788e8 - 1 / 4.6929344e9)
+    entries = [
+        OutletSettings("left branch", "three-element windkessel", resistance=4.6929344e9),
+        OutletSettings("right branch", "three-element windkessel", resistance=rest, characteristic_resistance=1e6),
+    ]
+    held = 3e-11  # the three segments of this network hold 1e-11 each
+    target = CalibrationSettings(compliance=0.4 * 1.065431e-8 + held)
+    _, result = calibrated(fork, entries, target)
+    compliance = {round(one.resistance): one.compliance for one in result.outlets}
+    assert compliance[4692934400] == pytest.approx(1.278518e-10, rel=1e-6)

@@ -93,3 +93,28 @@ def test_random_nets_agree_with_a_dense_solve(seed: int) -> None:
     laplacian[-1], source[-1] = np.eye(n)[-1], 2.0
     expected = np.linalg.solve(laplacian, source)
     np.testing.assert_allclose(steady_state(net).pressure, expected, rtol=1e-7)
+
+
+def test_needle_of_a_textbook() -> None:
+    """OpenStax College Physics 2e, example 12.8 (seen): 0.120 cm³/s through a needle into a vein at 8 mmHg.
+
+    r 0.150 mm, L 2.50 cm, η 1.00e-3 Pa·s, vein 1.066e3 Pa: the entrance stands at 1.62e4 Pa (three digits printed).
+    """
+    resistance = 8 * 1.00e-3 * 2.50e-2 / (np.pi * 0.150e-3**4)
+    net = circuit([(0, 1)], [resistance], [Inlet(0, mean_flow=0.120e-6)], [Outlet(1, "fixed pressure", 1.066e3)])
+    assert steady_state(net).pressure[0] == pytest.approx(1.62e4, rel=5e-3)
+
+
+def test_mirror_symmetric_ring_has_no_cross_flow() -> None:
+    """Two carotids, a basilar with two posterior ends, two anterior and two middle ends: nothing crosses the midline."""
+    feed = [(0, 1), (2, 3), (4, 5)]
+    sides = [(5, 6), (5, 7), (1, 6), (3, 7), (1, 8), (3, 9), (8, 9)]
+    ends = [(1, 10), (3, 11), (6, 12), (7, 13), (8, 14), (9, 15)]
+    value = [3e8, 3e8, 2e8, 4e7, 4e7, 5e8, 5e8, 7e7, 7e7, 1e8, 1e9, 1e9, 2e9, 2e9, 1.5e9, 1.5e9]
+    inlets = [Inlet(node, pressure=12399.0) for node in (0, 2, 4)]
+    outlets = [Outlet(node, "resistance", 667.0, peripheral_resistance=6e9) for node in range(10, 16)]
+    state = steady_state(circuit(feed + sides + ends, value, inlets, outlets))
+    link = (feed + sides).index((8, 9))
+    assert abs(state.flow[link]) < 1e-10 * np.abs(state.flow).max()
+    np.testing.assert_allclose(state.outlet_flow[0::2], state.outlet_flow[1::2], rtol=1e-10)
+    assert state.mass_residual < 1e-14
