@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from typing import Final
 
 import numpy as np
 
@@ -15,6 +16,8 @@ from geomprep.literature import Row, row, rows
 from geomprep.model import Basis, FloatArray
 
 __all__ = ["WaveSpeeds", "wave_speeds"]
+
+_PLURAL: Final = {"artery": "arteries", "vein": "veins"}
 
 
 @dataclass(frozen=True, eq=False)
@@ -127,7 +130,7 @@ def _from_row(use: WallUse, source: Row, radius: FloatArray, density: float) -> 
             f"[{use.key}]: stiffness = '{source.key}' gives {gives or source.kind}, no stiffness; {_ways(use)}"
         )
     if not source.fits(use.vessel_class):
-        raise InputError(f"[{use.key}]: '{source.key}' holds for {source.vessel_class}s; {_ways(use)}")
+        raise InputError(f"[{use.key}]: '{source.key}' holds for {_PLURAL[source.vessel_class]}; {_ways(use)}")
     if source.kind == "value":
         speed = np.full(len(radius), float(source.value or 0.0))
     else:

@@ -13,7 +13,7 @@ from typing import Any, Final
 from geomprep.errors import InputError
 from geomprep.laws.stiffness import RELATIONS
 from geomprep.literature.row import CHECKED, KINDS, Row
-from geomprep.units import parse_quantity, unit_factor
+from geomprep.units import DIMENSIONS, parse_quantity, unit_factor
 
 __all__ = ["parse_rows", "row", "rows"]
 
@@ -29,6 +29,12 @@ _OWN: Final[dict[str, set[str]]] = {
     "size": {"size_means", "mean", "spread", "range"},
 }
 _NEEDED: Final = ("key", "kind", "of", "citation", "checked")
+_OWN_NEEDED: Final = {
+    "value": ("quantity", "value"),
+    "relation": ("function", "coefficients"),
+    "exponents": ("m", "n"),
+    "size": ("size_means",),
+}
 
 
 @cache
@@ -91,7 +97,11 @@ def parse_rows(text: str) -> tuple[Row, ...]:
     >>> parse_rows("")
     ()
     """
-    found = tuple(_parse(fields) for fields in tomllib.loads(text).get("row", []))
+    try:
+        table = tomllib.loads(text)
+    except tomllib.TOMLDecodeError as fault:
+        raise InputError(f"literature table cannot be read: {fault}") from fault
+    found = tuple(_parse(fields) for fields in table.get("row", []))
     keys = [one.key for one in found]
     twice = sorted({key for key in keys if keys.count(key) > 1})
     if twice:
@@ -119,9 +129,7 @@ def _check(name: str, fields: dict[str, Any]) -> None:
     for key, words in (("kind", KINDS), ("checked", CHECKED)):
         if fields[key] not in words:
             raise InputError(f"{name}: {key} = '{fields[key]}'; choose one of {', '.join(words)}")
-    unknown = set(fields) - _COMMON - _OWN[fields["kind"]]
-    if unknown:
-        raise InputError(f"{name}: a row of kind {fields['kind']} has no field '{min(unknown)}'")
+    _check_own(name, fields)
     if fields.get("vessel_class", "any") not in ("any", "artery", "vein"):
         raise InputError(f"{name}: vessel_class = '{fields['vessel_class']}'; choose one of any, artery, vein")
     allowed = ("high", "medium") if fields["checked"] == "memory" else ("",)
@@ -132,10 +140,29 @@ def _check(name: str, fields: dict[str, Any]) -> None:
         )
 
 
+def _check_own(name: str, fields: dict[str, Any]) -> None:
+    """Raise where the fields of a kind of row are missing, too many or of the wrong type."""
+    unknown = set(fields) - _COMMON - _OWN[fields["kind"]]
+    if unknown:
+        raise InputError(f"{name}: a row of kind {fields['kind']} has no field '{min(unknown)}'")
+    missing = [key for key in _OWN_NEEDED[fields["kind"]] if key not in fields]
+    if missing:
+        raise InputError(f"{name}: '{missing[0]}' is missing")
+    for key, held in fields.items():
+        wanted, word = ((int, float), "a number") if key in ("m", "n") else (str, "text")
+        parts = held.values() if isinstance(held, dict) else held if isinstance(held, list) else (held,)
+        if not all(isinstance(part, wanted) for part in parts):
+            raise InputError(f"{name}: {key} = {held!r}: it must be {word}")
+    if fields.get("quantity", "number") not in DIMENSIONS:
+        raise InputError(f"{name}: quantity = '{fields['quantity']}'; choose one of {', '.join(DIMENSIONS)}")
+
+
 def _interval(name: str, pair: list[str] | None, quantity: str) -> tuple[float | None, float | None]:
     """Read a printed interval, or none."""
     if pair is None:
         return None, None
+    if len(pair) != 2:
+        raise InputError(f"{name}: {pair} given; an interval is two quantities")
     low, high = (parse_quantity(text, quantity, name) for text in pair)
     if not low < high:
         raise InputError(f"{name}: interval {pair[0]} to {pair[1]} is empty")
@@ -172,7 +199,10 @@ def _coefficient(name: str, text: str, unit: str) -> float:
     factor, dimension = unit_factor(given)
     if dimension != unit_factor(unit)[1]:
         raise InputError(f"{name}: coefficient '{text}' must have the dimension of '{unit or '1'}'")
-    return float(number) * factor
+    try:
+        return float(number) * factor
+    except ValueError as fault:
+        raise InputError(f"{name}: coefficient '{text}': expected a number and its unit") from fault
 
 
 def _exponents(name: str, fields: dict[str, Any]) -> dict[str, Any]:

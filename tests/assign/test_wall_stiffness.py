@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import dataclasses
+
 import numpy as np
 import pytest
 
@@ -15,8 +17,6 @@ MMHG = 133.322387415
 
 def speeds(network, settings, pressure):
     walls, origins, _ = assign_walls(network, settings, np.full(len(network.stations), pressure))
-    import dataclasses
-
     return imaged_wave_speed(dataclasses.replace(network, walls=walls)), {o.field: o for o in origins}
 
 
@@ -40,7 +40,7 @@ def test_published_relations(straight, radius: float, olufsen: float, mynard_smo
         ("wave-speed-reymond-2009", reymond),
     ]:
         speed, origins = speeds(network, {"artery": WallSettings(stiffness=key)}, 100 * MMHG)
-        assert speed == pytest.approx([expected] * 2, rel=2e-6)
+        assert speed == pytest.approx([expected] * 2, rel=4e-6)  # six printed digits
         assert origins["stations.stiffness"].basis is Basis.PUBLISHED
         assert origins["stations.stiffness"].detail == key
 
@@ -94,7 +94,7 @@ def test_all_questions_are_asked_at_once(straight) -> None:
         (ARTERY, WallSettings(stiffness="wall-thickness-blanco-2015"), "gives thickness ratio, no stiffness"),
         (ARTERY, WallSettings(stiffness="blood-density"), "gives density, no stiffness"),
         (ARTERY, WallSettings(stiffness="wave-speed-dog-limb-veins-1971"), "holds for veins"),
-        (VEIN, WallSettings(stiffness="wave-speed-reymond-2009"), "holds for arterys|holds for arteries"),
+        (VEIN, WallSettings(stiffness="wave-speed-reymond-2009"), "holds for arteries"),
         (VEIN, WallSettings(young_modulus=1e6, wall_thickness=5e-4), "does not fix the law of a collapsible vein"),
     ],
 )
