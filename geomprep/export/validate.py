@@ -8,31 +8,39 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any, Final
 
+import numpy as np
+
 from geomprep.errors import NetworkFileError
 from geomprep.export.checks.basis import basis_faults
+from geomprep.export.checks.ends import end_faults
 from geomprep.export.checks.faults import Fault
+from geomprep.export.checks.geometry import height_faults, junction_area_faults, measure_faults
 from geomprep.export.checks.meaning import (
     identity_faults,
     incidence_faults,
     reference_faults,
     station_faults,
-    wall_faults,
 )
 from geomprep.export.checks.ranges import length_faults, range_faults
+from geomprep.export.checks.schema import schema_faults
 from geomprep.export.checks.steady import lumped_faults, steady_faults
+from geomprep.export.checks.walls import wall_faults
 from geomprep.export.companion import read_companion
 from geomprep.export.decode import decoded, structured
 
-__all__ = ["ValidationReport", "document_faults", "validate_network"]
+__all__ = ["SMALL_FILE", "ValidationReport", "document_faults", "validate_network"]
 
 Check = Callable[[Mapping[str, Any]], Iterator[Fault]]
+
+SMALL_FILE: Final = 1_000_000
+"""Bytes up to which a file that passes is held against the JSON Schema too."""
 
 # each round rests on what the rounds before it have made sure of
 _ROUNDS: Final[tuple[tuple[Check, ...], ...]] = (
     (length_faults, range_faults),
     (identity_faults, reference_faults),
-    (incidence_faults, station_faults),
-    (wall_faults, lumped_faults, basis_faults),
+    (incidence_faults, end_faults, height_faults, station_faults),
+    (measure_faults, junction_area_faults, wall_faults, lumped_faults, basis_faults),
     (steady_faults,),
 )
 
@@ -90,7 +98,9 @@ def validate_network(path: str | os.PathLike[str]) -> ValidationReport:
     if faults:
         return ValidationReport(tuple(faults), "")
     found, said = document_faults(value, file.parent)
-    return ValidationReport(found, said)
+    if not found and len(data) <= SMALL_FILE:
+        found = tuple(schema_faults(value))
+    return ValidationReport(found, said if not found else "")
 
 
 def document_faults(value: Any, folder: Path) -> tuple[tuple[Fault, ...], str]:
@@ -119,7 +129,8 @@ def document_faults(value: Any, folder: Path) -> tuple[tuple[Fault, ...], str]:
         except NetworkFileError as fault:
             return (Fault("companion", "stations.companion", str(fault)),), ""
     for checks in _ROUNDS:
-        found = tuple(fault for check in checks for fault in check(flat))
+        with np.errstate(all="ignore"):  # numbers of a broken file may overflow; what is not finite fails its check
+            found = tuple(fault for check in checks for fault in check(flat))
         if found:
             return found, ""
     return (), _said(flat)

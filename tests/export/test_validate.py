@@ -12,6 +12,7 @@ import pytest
 from geomprep.case.build import build
 from geomprep.errors import NetworkFileError
 from geomprep.export import schema, schema_text, validate_network
+from geomprep.export.checks.schema import schema_faults
 from geomprep.export.validate import document_faults
 
 SAMPLES = Path(__file__).parent.parent.parent / "sample_geometries"
@@ -254,7 +255,30 @@ MEANING: list[tuple[str, Change, str]] = [
     ("a resistance twice as high", scaled("segments.lumped.resistance.2", 2.0), "steady check"),
     ("a flow with the other sign", scaled("steady_check.flow.0", -1.0), "steady check"),
     ("a pressure in mmHg", scaled("steady_check.pressure.0", 1 / 133.322), "steady check"),
-    ("heights lost", put("nodes.height.3", 0.5), "steady check"),
+    ("a height of another plane", put("nodes.height.3", 0.5), "heights"),
+    ("heights where no gravity is", put("conventions.gravity", [0.0, 0.0, 0.0]), "heights"),
+    ("gravity of another posture", put("conventions.gravity", [0.0, 0.0, -9.80665]), "heights"),
+    ("gravity twice as strong", put("conventions.gravity", [0.0, 19.6133, 0.0]), "steady check"),
+    ("a volume in millilitres", scaled("segments.volume.1", 1e6), "range"),
+    ("a volume 1 % off", scaled("segments.volume.1", 1.01), "stations"),
+    ("a resistance radius for a volume radius", scaled("segments.radii.for_volume.1", 0.999), "stations"),
+    ("a minimum that is none", scaled("segments.radii.minimum.2", 1.001), "stations"),
+    ("an integral of the mean radius", scaled("segments.integrals.inverse_fourth_power.1", 0.9), "stations"),
+    ("an inertance with 4/3", scaled("segments.lumped.inertance.1", 4 / 3), "steady check"),
+    ("a compliance of another wall", scaled("segments.lumped.compliance.1", 1.1), "wall law"),
+    ("a chord longer than its arc", put("stations.position.3.0", 0.5), "stations"),
+    ("a junction area of another segment", scaled("junctions.area.0", 1.1), "stations"),
+    ("an inlet that fixes nothing", put("inlets.0.pressure", None), "ends"),
+    ("an inlet that fixes both", put("inlets.0.mean_flow", 1e-6), "ends"),
+    ("a windkessel without compliance", put("outlets.0.compliance", None), "ends"),
+    ("a windkessel without its first resistance", put("outlets.0.characteristic_resistance", None), "ends"),
+    ("a fixed pressure behind a resistance", put("outlets.0.model", "fixed pressure"), "ends"),
+    ("an outlet at the inlet", same("outlets.0.node", "inlets.0.node"), "incidence"),
+    ("a station of surroundings that are not there", put("stations.surroundings.0", 3), "reference"),
+    ("a basis of a field that is not there", put("basis.fields.3.field", "segments.colour"), "basis"),
+    ("a number derived from nothing", put("basis.fields.12.detail", "somewhere"), "basis"),
+    ("two bases for one number", lambda net: net["basis"]["fields"].append(net["basis"]["fields"][0]), "basis"),
+    ("the radius of a repair that is not there", put("basis.station_radius.repair.0", "repair-1"), "basis"),
     ("another far pressure", scaled("outlets.0.far_pressure", 1.5), "steady check"),
     ("an outlet resistance in other units", scaled("outlets.0.peripheral_resistance", 133.322), "steady check"),
     ("a number without basis", put("basis.fields", []), "basis"),
@@ -286,6 +310,9 @@ def test_both_refuse(valid, folder: Path, checker, change: Change, word: str) ->
     faults, _ = document_faults(net, folder)
     assert faults, "the validator lets it pass"
     assert word in {fault.word for fault in faults}, [str(fault) for fault in faults]
+    # to a schema a negative row number is a number out of range
+    of_schema = "range" if word == "reference" else word
+    assert of_schema in {fault.word for fault in schema_faults(net)}, [str(fault) for fault in schema_faults(net)]
     assert all("\n" not in str(fault) for fault in faults)
 
 

@@ -21,13 +21,17 @@ WORDS: Final[dict[str, str]] = {
     "identity": "an id stands twice",
     "reference": "a row number or an id leads nowhere",
     "incidence": "nodes, segments, junctions, inlets and outlets do not fit together",
-    "stations": "stations do not fit their segment",
+    "ends": "an inlet or an outlet says too much or too little",
+    "heights": "heights do not follow from positions and gravity",
+    "stations": "stations do not fit their segment, or its numbers do not follow from them",
     "wall law": "the tube law does not give the imaged area",
     "basis": "a number has no basis, or one that leads nowhere",
     "companion": "the companion is missing or not the one named",
     "steady check": "the steady check does not solve its own equations",
 }
 """First word of every fault -> what it means."""
+
+_LONGEST = 400
 
 
 @dataclass(frozen=True)
@@ -54,5 +58,7 @@ class Fault:
     message: str
 
     def __str__(self) -> str:
-        """Return word, place and message in one line."""
-        return f"{self.word}: {self.place or 'file'}: {self.message}"
+        """Return word, place and message in one line, whatever texts of the file stand in it."""
+        line = f"{self.word}: {self.place or 'file'}: {self.message}"
+        shown = line if len(line) <= _LONGEST else line[:_LONGEST] + " …"
+        return "".join(sign if sign.isprintable() else ascii(sign)[1:-1] for sign in shown)

@@ -1,4 +1,4 @@
-"""Whether the tables of a network file mean something together: ids, references, ends, stations, walls."""
+"""Whether the tables of a network file mean something together: ids, references, ends, stations."""
 
 from __future__ import annotations
 
@@ -9,13 +9,11 @@ import numpy as np
 
 from geomprep.export.checks.faults import Fault
 from geomprep.export.checks.ranges import column_lengths
-from geomprep.laws.tube import pressure, slope
 from geomprep.model import Field, field_tables
 
-__all__ = ["identity_faults", "incidence_faults", "reference_faults", "station_faults", "wall_faults"]
+__all__ = ["identity_faults", "incidence_faults", "reference_faults", "station_faults"]
 
 _EXACT: Final = 1e-9
-_IMAGED: Final = 1e-8
 
 
 def identity_faults(flat: Mapping[str, Any]) -> Iterator[Fault]:
@@ -52,7 +50,15 @@ def reference_faults(flat: Mapping[str, Any]) -> Iterator[Fault]:
     for row_number, law in enumerate(flat["segments"]["tube_law"]):
         if law not in laws:
             yield Fault("reference", f"segments.tube_law[{row_number}]", f"'{law}' is no id in tube_laws")
-            return
+            break
+    sources, repairs = ({record[key] for record in flat[name]} for name, key in (("sources", "key"), ("repairs", "id")))
+    for number, finding in enumerate(flat["findings"]):
+        if finding["source"] and finding["source"] not in sources:
+            yield Fault("reference", f"findings[{number}].source", f"'{finding['source']}' is no key in sources")
+    for number, repair in enumerate(flat["repairs"]):
+        for other in repair["after"]:
+            if other not in repairs:
+                yield Fault("reference", f"repairs[{number}].after", f"'{other}' is no id in repairs")
 
 
 def _rows_of(flat: Mapping[str, Any], table: str) -> int:
@@ -185,33 +191,3 @@ def _apart(flat: Mapping[str, Any], station: Any, end: str) -> Any:
     """Distance between stations and the nodes at an end of their segments."""
     node = np.asarray(flat["segments"][end])
     return np.linalg.norm(flat["stations"]["position"][station] - flat["nodes"]["position"][node], axis=1)
-
-
-def wall_faults(flat: Mapping[str, Any]) -> Iterator[Fault]:
-    """Find stations at which the tube law does not give the imaged area at the imaged pressure."""
-    stations = flat["stations"]
-    owner = np.repeat(np.arange(len(flat["segments"]["id"])), np.diff(stations["offsets"]))
-    of_segment = np.array(flat["segments"]["tube_law"], dtype=object)
-    for law in flat["tube_laws"]:
-        rows = np.flatnonzero((of_segment == law["id"])[owner])
-        if rows.size == 0:
-            continue
-        at = {name: stations[name][rows] for name in _WALL_COLUMNS}
-        shape = (law["m"], law["n"])
-        found = pressure(
-            at["area"], at["reference_area"], at["stiffness"], at["reference_transmural"], shape, law["form"]
-        )
-        steep = slope(at["area"], at["reference_area"], at["stiffness"], shape, law["form"])
-        error = np.abs(found - at["imaging_transmural"]) / (steep * at["area"])  # relative error of the area
-        bad = np.flatnonzero(~(error <= _IMAGED))
-        if bad.size:
-            row = int(rows[bad[0]])
-            message = (
-                f"the law '{law['id']}' gives {found[bad[0]]:.6g} Pa at the imaged area; imaging_transmural says "
-                f"{at['imaging_transmural'][bad[0]]:.6g} Pa"
-            )
-            yield Fault("wall law", f"stations.imaging_transmural[{row}]", message)
-            return
-
-
-_WALL_COLUMNS = ("area", "reference_area", "stiffness", "reference_transmural", "imaging_transmural")

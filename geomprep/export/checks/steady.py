@@ -10,7 +10,7 @@ import numpy as np
 from geomprep.errors import ModelError
 from geomprep.export.checks.faults import Fault
 from geomprep.laws.blood import momentum_factor
-from geomprep.laws.lumped import resistance
+from geomprep.laws.lumped import inertance, resistance
 from geomprep.solve import Boundary, solve_between
 
 __all__ = ["lumped_faults", "steady_faults"]
@@ -19,19 +19,23 @@ _EXACT: Final = 1e-9
 
 
 def lumped_faults(flat: Mapping[str, Any]) -> Iterator[Fault]:
-    """Find blood factors and resistances that do not follow from what the file says beside them."""
+    """Find blood factors, resistances and inertances that do not follow from what the file says beside them."""
     blood = flat["blood"]
     profile = blood["velocity_profile"]
     for name, value in (("momentum_factor", momentum_factor(profile)), ("friction_factor", 2.0 * (profile + 2.0))):
         if abs(blood[name] / value - 1.0) > _EXACT:
             yield Fault("steady check", f"blood.{name}", f"{blood[name]:.9g}; the velocity profile gives {value:.9g}")
-    expected = resistance(flat["segments.integrals"]["inverse_fourth_power"], blood["viscosity"], profile)
-    said = flat["segments.lumped"]["resistance"]
-    off = np.flatnonzero(np.abs(said / expected - 1.0) > _EXACT)
-    if off.size:
-        row = off[0]
-        message = f"{said[row]:.9g} Pa.s/m3; integrals, viscosity and profile give {expected[row]:.9g}"
-        yield Fault("steady check", f"segments.lumped.resistance[{row}]", message)
+    integrals, lumped = flat["segments.integrals"], flat["segments.lumped"]
+    expected = {
+        "resistance": resistance(integrals["inverse_fourth_power"], blood["viscosity"], profile),
+        "inertance": inertance(integrals["inverse_area"], blood["density"]),
+    }
+    for name, values in expected.items():
+        off = np.flatnonzero(~(np.abs(lumped[name] / values - 1.0) <= _EXACT))
+        if off.size:
+            row = off[0]
+            message = f"{lumped[name][row]:.9g}; integrals and blood give {values[row]:.9g}"
+            yield Fault("steady check", f"segments.lumped.{name}[{row}]", message)
 
 
 def steady_faults(flat: Mapping[str, Any]) -> Iterator[Fault]:
