@@ -30,6 +30,7 @@ from geomprep.case.sections import (
 )
 from geomprep.case.values import read_value
 from geomprep.errors import CaseError
+from geomprep.repair import STEPS
 
 __all__ = ["read_case"]
 
@@ -39,6 +40,7 @@ _RECORDS: Final[dict[str, type[Any]]] = {
     "imaging_state": ImagingStateSection,
     "repair.join": JoinSection,
     "repair.radius": RadiusSection,
+    **{f"repair.{row.name}": row.settings for row in STEPS},
     "segments": SegmentsSection,
     "anatomy": AnatomySection,
     "walls.*": WallsSection,
@@ -255,6 +257,7 @@ def _assembled(file: Path, data: bytes, sections: dict[str, list[tuple[str, Any]
         imaging_state=one("imaging_state"),
         join=one("repair.join"),
         radius=one("repair.radius"),
+        steps={row.name: one(f"repair.{row.name}") for row in STEPS},
         segments=one("segments"),
         anatomy=one("anatomy"),
         walls=dict(sections["walls.*"]),

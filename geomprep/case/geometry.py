@@ -22,12 +22,14 @@ from geomprep.measure import junctions, measure_segments
 from geomprep.model import Centrelines, Network, Repair, concatenate
 from geomprep.repair import (
     PERSON,
-    JoinResult,
+    Given,
     JoinSettings,
     RadiusSettings,
+    StepResult,
     Verdict,
     Verdicts,
     join,
+    mend_graph,
     mend_radii,
 )
 from geomprep.segments import leave_out_unreached, order_segments, orient, resample, split
@@ -127,7 +129,7 @@ def recorded_verdicts(case: Case) -> Verdicts:
 
 def _joined(
     case: Case, verdicts: Verdicts, progress: Progress
-) -> tuple[JoinResult, tuple[InputRecord, ...], tuple[Finding, ...]]:
+) -> tuple[StepResult, tuple[InputRecord, ...], tuple[Finding, ...]]:
     """Read all files of a case, give their numbers a meaning, join their lines."""
     progress("read", 0.05)
     contents = read_files([case.folder / statement.file for statement in case.inputs])
@@ -138,7 +140,17 @@ def _joined(
     mended = mend_radii(centrelines, _stated(case.radius, RadiusSettings), verdicts)
     del centrelines
     joined = join(mended.centrelines, _stated(case.join, JoinSettings), verdicts)
-    return replace(joined, repairs=(*mended.repairs, *joined.repairs)), records, findings
+    progress("repair", 0.45)
+    # those of joining first: raw points that it dropped name its repairs by their number
+    before = (*joined.repairs, *mended.repairs)
+    whole = mend_graph(joined.graph, case.steps, Given(verdicts, _voxel(case)), before)
+    return replace(whole, findings=(*joined.findings, *whole.findings)), records, findings
+
+
+def _voxel(case: Case) -> float | None:
+    """Largest voxel edge that the case states."""
+    edges = [edge for statement in case.inputs for edge in statement.voxel or ()]
+    return max(edges, default=None)
 
 
 def _centrelines(case: Case, contents: list[FileContents]) -> tuple[Centrelines, tuple[Finding, ...]]:

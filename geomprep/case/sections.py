@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 from pathlib import Path
+from typing import Any
 
 from geomprep.files.statement import InputStatement
 
@@ -175,6 +176,8 @@ class Case:
     stated : frozenset of str
         Paths of the keys that a person stated, such as ``blood.viscosity`` and
         ``outlets[0].pressure``: their basis is ``user``.
+    steps : dict of str to settings
+        Settings of every step of :data:`geomprep.repair.STEPS`, by its name.
     """
 
     file: str
@@ -185,6 +188,7 @@ class Case:
     imaging_state: ImagingStateSection
     join: JoinSection
     radius: RadiusSection
+    steps: dict[str, Any]
     segments: SegmentsSection
     anatomy: AnatomySection
     walls: dict[str, WallsSection]

@@ -1,15 +1,33 @@
-"""The repair steps after joining: one function and one row each, in the order in which they run."""
+"""How a repair step is run: what it is given, what it leaves, one after the other."""
 
 from __future__ import annotations
 
-from collections.abc import Callable
-from dataclasses import dataclass
+from collections.abc import Callable, Iterable
+from dataclasses import dataclass, field, replace
+from typing import Any
 
 from geomprep.findings import Finding
 from geomprep.model import PointGraph, Repair
+from geomprep.repair.edits import renumbered
 from geomprep.repair.verdicts import Verdicts
 
-__all__ = ["Step", "StepResult", "run_steps"]
+__all__ = ["Given", "Step", "StepResult", "run_steps"]
+
+
+@dataclass(frozen=True)
+class Given:
+    """What a step knows beside the graph.
+
+    Attributes
+    ----------
+    verdicts : Verdicts
+        Recorded choices, which go before every rule.
+    voxel : float, optional
+        Largest edge of a voxel of the image in metres, where the case states it.
+    """
+
+    verdicts: Verdicts = field(default_factory=Verdicts)
+    voxel: float | None = None
 
 
 @dataclass(frozen=True, eq=False)
@@ -30,38 +48,43 @@ class StepResult:
     findings: tuple[Finding, ...] = ()
 
 
-Step = Callable[[PointGraph, Verdicts], StepResult]
-"""A step with its settings bound."""
+Step = Callable[[PointGraph, Any, Given], StepResult]
+"""A step: graph, its settings, what else is known."""
 
 
-def run_steps(graph: PointGraph, steps: tuple[Step, ...], verdicts: Verdicts) -> StepResult:
+def run_steps(
+    graph: PointGraph, steps: Iterable[tuple[Step, Any]], given: Given, before: tuple[Repair, ...] = ()
+) -> StepResult:
     """Run steps one after the other and gather what they leave.
 
     Parameters
     ----------
     graph : PointGraph
-    steps : tuple of Step
+    steps : iterable of (Step, settings)
         In order.
-    verdicts : Verdicts
-        Recorded choices, which go before every rule.
+    given : Given
+    before : tuple of Repair
+        Repairs made already, to whose numbers `merged_into` may point.
 
     Returns
     -------
     StepResult
+        With the repairs made before in front.
 
     Examples
     --------
     >>> import numpy as np
     >>> none, one = np.empty(0), np.zeros((0, 3))
     >>> graph = PointGraph(one, none, none, none, none, none, none, np.empty((0, 2)), none, none, one, none, none, none)
-    >>> run_steps(graph, (), Verdicts()).repairs
+    >>> run_steps(graph, (), Given()).repairs
     ()
     """
-    repairs: tuple[Repair, ...] = ()
+    repairs = before
     findings: tuple[Finding, ...] = ()
-    for step in steps:
-        result = step(graph, verdicts)
-        graph = result.graph
+    for step, settings in steps:
+        result = step(graph, settings, given)
+        into = renumbered(result.graph.merged_into, graph.merged_into, len(repairs))
+        graph = result.graph if result.graph is graph else replace(result.graph, merged_into=into)
         repairs += result.repairs
         findings += result.findings
     return StepResult(graph, repairs, findings)

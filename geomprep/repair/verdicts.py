@@ -66,9 +66,17 @@ class Verdicts:
     Attributes
     ----------
     recorded : mapping of str to Verdict
+    complete : bool
+        True where the record holds every verdict of an earlier build: what it does not know is left alone,
+        whatever the thresholds say today.
     """
 
     recorded: Mapping[str, Verdict] = field(default_factory=dict)
+    complete: bool = False
+
+    def wanted(self, key: str, proposed: bool) -> bool:
+        """Return whether a candidate takes part: recorded, or proposed or asked by a rule that still counts."""
+        return key in self.recorded or (proposed and not self.complete)
 
     def settle(self, key: str, options: tuple[str, ...], proposal: str | None) -> Verdict:
         """Return what is done with one candidate.
@@ -107,6 +115,8 @@ class Verdicts:
                     f"decision on {key}: '{found.choice}' is no choice there; choose {' | '.join(options)}"
                 )
             return found
+        if self.complete:
+            return Verdict(options[0], RULE)
         if proposal is None:
             return Verdict(options[0], OPEN)
         return Verdict(proposal, RULE)

@@ -1,0 +1,64 @@
+"""The repair steps after joining: one row each, in the order in which they run."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import Any, Final
+
+from geomprep.model import PointGraph, Repair
+from geomprep.repair.cliques import CliqueSettings, collapse_cliques
+from geomprep.repair.holes import HoleSettings, fill_holes
+from geomprep.repair.spurs import SpurSettings, drop_spurs
+from geomprep.repair.steps import Given, Step, StepResult, run_steps
+
+__all__ = ["STEPS", "StepRow", "mend_graph"]
+
+
+@dataclass(frozen=True)
+class StepRow:
+    """One step: its name in the case file, its settings, its function, what it does in a line."""
+
+    name: str
+    settings: type[Any]
+    step: Step
+    does: str
+
+
+STEPS: Final[tuple[StepRow, ...]] = (
+    StepRow("cliques", CliqueSettings, collapse_cliques, "collapse knots of short edges at junctions"),
+    StepRow("holes", HoleSettings, fill_holes, "fill holes between two arms of one vessel"),
+    StepRow("spurs", SpurSettings, drop_spurs, "drop branches that end in the tube of their parent"),
+)
+"""In this order: what a step leaves is what the next one sees."""
+
+
+def mend_graph(
+    graph: PointGraph, settings: Mapping[str, Any], given: Given, before: tuple[Repair, ...] = ()
+) -> StepResult:
+    """Run every step of the table on a graph.
+
+    Parameters
+    ----------
+    graph : PointGraph
+    settings : mapping of str to settings
+        By the name of the step; defaults for those left out.
+    given : Given
+        Recorded verdicts and what is known of the image.
+    before : tuple of Repair
+        Repairs made already, to whose numbers `merged_into` may point.
+
+    Returns
+    -------
+    StepResult
+        Repairs made before in front.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> none, one = np.empty(0), np.zeros((0, 3))
+    >>> graph = PointGraph(one, none, none, none, none, none, none, np.empty((0, 2)), none, none, one, none, none, none)
+    >>> mend_graph(graph, {}, Given()).findings
+    ()
+    """
+    return run_steps(graph, ((row.step, settings.get(row.name) or row.settings()) for row in STEPS), given, before)
