@@ -106,7 +106,7 @@ def mend_radii(centrelines: Centrelines, settings: RadiusSettings, verdicts: Ver
     """
     if not settings.use or centrelines.line_radius is not None:
         return RadiusResult(centrelines, ())
-    used = np.unique(centrelines.connectivity)
+    used = _used_points(centrelines)
     label, first = same_place(centrelines.points[used])
     value = _log_radius(centrelines.radius[used], label, len(first))
     edges = _edges(centrelines, used, label)
@@ -118,6 +118,13 @@ def mend_radii(centrelines: Centrelines, settings: RadiusSettings, verdicts: Ver
     fitted = _fitted(profile, kinds > 0)
     repairs, mended = _records(centrelines, profile, (kinds, fitted), used[first], verdicts)
     return RadiusResult(_with_radii(centrelines, profile, (fitted, mended), (used, label)), repairs)
+
+
+def _used_points(centrelines: Centrelines) -> IntArray:
+    """Raw points on any line, rising."""
+    used = np.zeros(centrelines.n_points, np.bool_)
+    used[centrelines.connectivity] = True
+    return np.flatnonzero(used)
 
 
 def _log_radius(radius: FloatArray, label: IntArray, count: int) -> FloatArray:
@@ -189,8 +196,8 @@ def _spikes(profile: _Profile, limit: float) -> BoolArray:
     window = np.where(usable, log_radius[inside], np.nan)
     enough = np.count_nonzero(~np.isnan(window), axis=1) >= 4
     rows, window = rows[enough], window[enough]
-    middle = np.nanmedian(window, axis=1) if len(rows) else np.zeros(0)
-    spread = np.nanmedian(np.abs(window - middle[:, None]), axis=1) if len(rows) else np.zeros(0)
+    middle = _row_medians(window)
+    spread = _row_medians(np.abs(window - middle[:, None]))
     far = np.abs(log_radius[rows] - middle) > np.maximum(limit, 5 * 1.4826 * spread)
     found = np.zeros(len(log_radius), np.bool_)
     found[rows[far]] = True
@@ -210,16 +217,27 @@ def _short_runs(found: BoolArray, chain: IntArray) -> BoolArray:
 def _decays(profile: _Profile, limit: float) -> BoolArray:
     """Rows at open ends that lie below the radius further in, from the end inwards."""
     found = np.zeros(len(profile.log_radius), np.bool_)
-    offsets = profile.cut.offsets
-    for chain in np.flatnonzero((profile.open_start | profile.open_end) & (np.diff(offsets) >= _NEAR_END)).tolist():
-        rows = np.arange(offsets[chain], offsets[chain + 1])
-        for is_open, way in ((profile.open_start[chain], rows), (profile.open_end[chain], rows[::-1])):
-            if is_open:
-                further = profile.log_radius[way[_LONGEST_DECAY : 2 * _LONGEST_DECAY + 1]]
-                level = np.nanmedian(further) if np.isfinite(further).any() else -np.inf
-                low = profile.log_radius[way[:_LONGEST_DECAY]] < level - limit
-                found[way[: int(np.argmin(np.append(low, False)))]] = True
+    first, last = profile.cut.offsets[:-1], profile.cut.offsets[1:] - 1
+    count = last - first + 1
+    for is_open, end, way in ((profile.open_start, first, 1), (profile.open_end, last, -1)):
+        chain = np.flatnonzero(is_open & (count >= _NEAR_END))
+        step = np.arange(2 * _LONGEST_DECAY + 1)
+        row = end[chain, None] + way * np.minimum(step, count[chain, None] - 1)
+        near = profile.log_radius[row]
+        near[step >= count[chain, None]] = np.nan
+        level = _row_medians(near[:, _LONGEST_DECAY:])
+        low = near[:, :_LONGEST_DECAY] < (level - limit)[:, None]
+        found[row[:, :_LONGEST_DECAY][np.logical_and.accumulate(low, axis=1)]] = True
     return found
+
+
+def _row_medians(values: FloatArray) -> FloatArray:
+    """Median of the numbers in each row; NaN where a row has none."""
+    ordered = np.sort(values, axis=1)  # NaN last
+    count = np.count_nonzero(~np.isnan(values), axis=1)
+    row = np.arange(len(values))
+    middle: FloatArray = (ordered[row, np.maximum(count - 1, 0) // 2] + ordered[row, count // 2]) / 2.0
+    return middle
 
 
 def _fitted(profile: _Profile, wrong: BoolArray) -> FloatArray:
