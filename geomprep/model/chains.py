@@ -1,10 +1,10 @@
 """Cut a point graph into chains of edges between its junctions and ends.
 
 The one place that walks a graph: joining, repair and segments share it. No compiler and
-no Python loop over points: every edge has two directed halves, each half points to its
-successor through a point of degree 2, and pointer doubling finds the end of every chain in
-log2(longest run) rounds. Edges that follow one another in the input are contracted
-into runs first, so that poly-lines cost only their ends.
+no Python loop over points: edges that follow one another in the input are first taken
+together as runs, so that poly-lines cost only their ends. Every run has two directed halves,
+each half points to its successor through a point of degree 2, and pointer doubling finds the
+end of every chain in log2(runs of the longest chain) rounds.
 """
 
 from __future__ import annotations
@@ -97,12 +97,16 @@ def chains(n_points: int, edges: IntArray, stop: BoolArray | None = None) -> Cha
     through[edges[edges[:, 0] == edges[:, 1], 0]] = False
     if stop is not None:
         through &= ~stop
-    successor = _successors(edges, through)
-    last, rank, ended = _doubled(successor, len(edges))
+    inner = through
+    runs = _Runs.of(edges, inner)
+    last, rank, ended = _doubled(_successors(runs.ends, inner))
     if not ended.all():  # a ring leads nowhere
-        _open_rings(edges, successor, ~ended[: len(edges)])
-        last, rank, _ = _doubled(successor, len(edges))
-    return _ordered(edges, last, rank, through)
+        inner = through.copy()
+        inner[_smallest_on_rings(edges, runs, ~ended[: len(runs.ends)])] = False
+        runs = _Runs.of(edges, inner)
+        last, rank, _ = _doubled(_successors(runs.ends, inner))
+    offsets, half = _ordered(last, rank)
+    return _laid_out(edges, runs, (offsets, half), through)
 
 
 def _none() -> IntArray:
@@ -110,66 +114,63 @@ def _none() -> IntArray:
     return np.empty(0, np.int64)
 
 
-def _successors(edges: IntArray, through: BoolArray) -> IntArray:
-    """For each half (h < e forwards, h ≥ e backwards) the half that leaves its head, or −1."""
-    n_edges = len(edges)
-    tail = np.concatenate((edges[:, 0], edges[:, 1]))
+@dataclass(frozen=True, eq=False)
+class _Runs:
+    """Edges that follow one another in the input, head to tail through points of degree 2."""
+
+    first: IntArray
+    count: IntArray
+    ends: IntArray
+
+    @classmethod
+    def of(cls, edges: IntArray, through: BoolArray) -> _Runs:
+        """Find the runs of the edges as they come."""
+        new = np.ones(len(edges), np.bool_)
+        new[1:] = (edges[:-1, 1] != edges[1:, 0]) | ~through[edges[1:, 0]]
+        first = np.flatnonzero(new)
+        count = np.diff(first, append=len(edges))
+        return cls(first, count, np.stack((edges[first, 0], edges[first + count - 1, 1]), axis=1))
+
+    def edges_of(self, half: IntArray) -> tuple[IntArray, IntArray]:
+        """Edges of halves one after the other, in their direction; where each half begins is given, too."""
+        run = np.where(half < len(self.first), half, half - len(self.first))
+        count = self.count[run]
+        starts = np.cumsum(count) - count
+        backward = half >= len(self.first)
+        step = np.where(backward, -1, 1)
+        edge = self.first[run] + np.where(backward, count - 1, 0) - step * starts
+        edge, step = np.repeat(edge, count), np.repeat(step, count)
+        return edge + step * np.arange(len(edge)), starts
+
+
+def _successors(runs: IntArray, through: BoolArray) -> IntArray:
+    """For each half (h < m forwards, h ≥ m backwards) the half that leaves its head, or −1."""
+    n_runs = len(runs)
+    tail = runs.T.ravel()
     half = np.flatnonzero(through[tail])
     # two halves leave every point of degree 2: their sum less one of them is the other
     total = np.bincount(tail[half], half, minlength=len(through)).astype(np.int64)
-    successor = np.full(2 * n_edges, -1, np.int64)
+    successor = np.full(2 * n_runs, -1, np.int64)
     # the half that arrives where one leaves is the reverse of it
-    successor[half + np.where(half < n_edges, n_edges, -n_edges)] = total[tail[half]] - half
+    successor[_reverse(half, n_runs)] = total[tail[half]] - half
     return successor
 
 
-def _open_rings(edges: IntArray, successor: IntArray, on_ring: BoolArray) -> None:
-    """Cut closed rings at their smallest point so that every chain has an end (in place)."""
-    n_edges = len(edges)
-    half = np.flatnonzero(np.concatenate((on_ring, on_ring)))
-    matrix = coo_array(
-        (np.ones(len(half), np.int8), (half % n_edges, successor[half] % n_edges)), shape=(n_edges, n_edges)
-    )
-    count, label = connected_components(matrix, directed=False)
-    closed = np.zeros(count, np.bool_)
-    closed[label[on_ring]] = True
-    _cut_at_smallest(edges, successor, label, closed)
+def _reverse(half: IntArray, n_runs: int) -> IntArray:
+    """The same runs the other way."""
+    return np.where(half < n_runs, half + n_runs, half - n_runs)
 
 
-def _cut_at_smallest(edges: IntArray, successor: IntArray, label: IntArray, closed: BoolArray) -> None:
-    """Remove the two links through the smallest point of each closed component (in place)."""
-    n_edges = len(edges)
-    on_ring = np.flatnonzero(closed[label])
-    smallest = np.full(len(closed), np.iinfo(np.int64).max)
-    np.minimum.at(smallest, label[on_ring], edges[on_ring].min(axis=1))
-    both_halves = np.concatenate((on_ring, on_ring + n_edges))
-    head = np.concatenate((edges[on_ring, 1], edges[on_ring, 0]))
-    successor[both_halves[head == smallest[label[both_halves % n_edges]]]] = -1
-
-
-def _doubled(successor: IntArray, n_edges: int) -> tuple[IntArray, IntArray, BoolArray]:
+def _doubled(successor: IntArray) -> tuple[IntArray, IntArray, BoolArray]:
     """Last half reached from each half, the number of steps to it, and whether there is a last one.
 
-    Halves whose successor is the next number (or the previous, backwards) are first taken
-    together as runs, so that the doubling works on run ends only; those that have
-    arrived take no further part.
+    Halves that have arrived take no further part.
     """
-    n_half = 2 * n_edges
-    index = np.arange(n_half, dtype=np.int64)
-    in_run = successor == np.where(index < n_edges, index + 1, index - 1)
-    in_run[[n_edges - 1, n_edges]] = False  # a run stays among forward or among backward halves
-    run_end, distance = _run_ends(in_run, n_edges)
-    heads = np.flatnonzero(~in_run)  # halves that end a run
-    position = np.full(n_half, -1, np.int64)
-    position[heads] = np.arange(len(heads))
-    target = successor[heads]
-    goes_on = target >= 0
+    goes_on = successor >= 0
     active = np.flatnonzero(goes_on)
-    jump = np.arange(len(heads), dtype=np.int64)
-    weight = np.zeros(len(heads), np.int64)
-    jump[active] = position[run_end[target[active]]]
-    weight[active] = 1 + distance[target[active]]
-    for _ in range(int(n_half).bit_length() + 1):
+    jump = np.where(goes_on, successor, np.arange(len(successor)))
+    weight = goes_on.astype(np.int64)
+    for _ in range(len(successor).bit_length() + 1):
         active = active[goes_on[jump[active]]]
         if len(active) == 0:
             break
@@ -177,49 +178,55 @@ def _doubled(successor: IntArray, n_edges: int) -> tuple[IntArray, IntArray, Boo
         more, further = weight[onward], jump[onward]
         weight[active] += more
         jump[active] = further
-    reached = position[run_end]
-    return heads[jump[reached]], distance + weight[reached], ~goes_on[jump[reached]]
+    return jump, weight, ~goes_on[jump]
 
 
-def _run_ends(in_run: BoolArray, n_edges: int) -> tuple[IntArray, IntArray]:
-    """End of the run of consecutive numbers each half is in, and the steps to that end."""
-    index = np.arange(2 * n_edges, dtype=np.int64)
-    far = np.where(in_run, np.iinfo(np.int64).max, index)
-    forward = np.minimum.accumulate(far[:n_edges][::-1])[::-1]
-    back = np.where(in_run, np.iinfo(np.int64).min, index)[n_edges:]
-    end = np.concatenate((forward, np.maximum.accumulate(back)))
-    return end, np.abs(end - index)
+def _smallest_on_rings(edges: IntArray, runs: _Runs, on_ring: BoolArray) -> IntArray:
+    """Smallest point of each closed ring, at which it is cut so that every chain has an end."""
+    which = np.flatnonzero(on_ring)
+    place, row = np.unique(runs.ends[which], return_inverse=True)
+    row = row.reshape(-1, 2)
+    matrix = coo_array((np.ones(len(row), np.int8), (row[:, 0], row[:, 1])), shape=(len(place), len(place)))
+    count, label = connected_components(matrix, directed=False)
+    edge, starts = runs.edges_of(which)
+    smallest = np.full(count, np.iinfo(np.int64).max)
+    np.minimum.at(smallest, label[row[:, 0]], np.minimum.reduceat(edges[edge].min(axis=1), starts))
+    return smallest
 
 
-def _ordered(edges: IntArray, last: IntArray, rank: IntArray, through: BoolArray) -> Chains:
-    """Lay the halves of each chain in order; of the two directions keep one."""
-    n_edges = len(edges)
-    half = np.arange(2 * n_edges)
-    reverse = np.where(half < n_edges, half + n_edges, half - n_edges)
+def _ordered(last: IntArray, rank: IntArray) -> tuple[IntArray, IntArray]:
+    """Lay the halves of each chain in order, of the two directions one: offsets of the chains, and the halves."""
+    n_runs = len(last) // 2
+    reverse = _reverse(np.arange(2 * n_runs), n_runs)
     first = reverse[last[reverse]]  # the half that starts the chain of each half
-    forward = np.flatnonzero(_keep_direction(first, last, n_edges))
-    start = forward[first[forward] == forward]
-    start = start[np.lexsort((start, np.minimum(start % n_edges, last[start] % n_edges)))]
-    chain = np.empty(2 * n_edges, np.int64)
-    chain[start] = np.arange(len(start))
-    lengths = rank[start] + 1
-    edge_offsets = np.concatenate(([0], np.cumsum(lengths)))
-    order = np.empty(n_edges, np.int64)
-    order[edge_offsets[chain[first[forward]]] + rank[first[forward]] - rank[forward]] = forward
-    edge = np.where(order < n_edges, order, order - n_edges)
-    flat = np.concatenate((edges[:, 0], edges[:, 1]))
-    offsets = edge_offsets + np.arange(len(start) + 1)
-    point = np.empty(offsets[-1], np.int64)
-    point[offsets[:-1]] = flat[start]
+    start_run = np.where(first < n_runs, first, first - n_runs)
+    end_run = np.where(last < n_runs, last, last - n_runs)
+    # of each chain and its reverse the one whose first run has the smaller number
+    kept = np.flatnonzero((start_run < end_run) | ((start_run == end_run) & (first < n_runs)))
+    first = first[kept]
+    start = kept[first == kept]
+    start = start[np.argsort(start_run[start])]
+    offsets = np.concatenate(([0], np.cumsum(rank[start] + 1)))
+    before = np.empty(2 * n_runs, np.int64)
+    before[start] = offsets[:-1] + rank[start]
+    order = np.empty(n_runs, np.int64)
+    order[before[first] - rank[kept]] = kept
+    return offsets, order
+
+
+def _laid_out(edges: IntArray, runs: _Runs, ordered: tuple[IntArray, IntArray], through: BoolArray) -> Chains:
+    """Points and edges of chains of halves."""
+    run_offsets, half = ordered
+    edge, starts = runs.edges_of(half)
+    edge_offsets = np.append(starts, len(edge))[run_offsets]
+    offsets = edge_offsets + np.arange(len(edge_offsets))
+    backward = half >= len(runs.first)
+    turned = np.repeat(backward, np.diff(starts, append=len(edge)))
+    first = half[run_offsets[:-1]]
+    point = np.empty(len(edge) + len(first), np.int64)
+    point[offsets[:-1]] = runs.ends.T.ravel()[first]
     inner = np.ones(len(point), np.bool_)
     inner[offsets[:-1]] = False
-    point[inner] = flat[reverse[order]]
+    point[inner] = edges.ravel()[2 * edge + ~turned]
     ring = (point[offsets[:-1]] == point[offsets[1:] - 1]) & through[point[offsets[:-1]]]
-    return Chains(point, offsets.astype(np.int64), edge.astype(np.int64), ring)
-
-
-def _keep_direction(first: IntArray, last: IntArray, n_edges: int) -> BoolArray:
-    """Of each chain and its reverse, keep the one whose starting edge has the smaller number."""
-    start, end = first % n_edges, last % n_edges
-    kept: BoolArray = (start < end) | ((start == end) & (first < n_edges))
-    return kept
+    return Chains(point, offsets, edge, ring)

@@ -75,7 +75,8 @@ class RadiusResult:
 class _Profile:
     """ln r along all chains; NaN where the radius is none."""
 
-    cut: Chains
+    place: IntArray
+    offsets: IntArray
     points: FloatArray
     log_radius: FloatArray
     along: FloatArray
@@ -110,11 +111,12 @@ def mend_radii(centrelines: Centrelines, settings: RadiusSettings, verdicts: Ver
     label, first = same_place(centrelines.points[used])
     value = _log_radius(centrelines.radius[used], label, len(first))
     edges = _edges(centrelines, used, label)
-    suspicious = np.isnan(value).any() or _has_steps(value, edges, settings)
-    if not suspicious:
+    if not (np.isnan(value).any() or _has_steps(value, edges, settings)):
         return RadiusResult(centrelines, ())
-    profile = _profile(centrelines.points[used[first]], value, edges)
+    profile = _profile(centrelines.points, used[first], value, edges)
     kinds = _kinds(profile, settings)
+    if not kinds.any() and _is_good(centrelines.radius[used]).all():
+        return RadiusResult(centrelines, ())
     fitted = _fitted(profile, kinds > 0)
     repairs, mended = _records(centrelines, profile, (kinds, fitted), used[first], verdicts)
     return RadiusResult(_with_radii(centrelines, profile, (fitted, mended), (used, label)), repairs)
@@ -129,24 +131,40 @@ def _used_points(centrelines: Centrelines) -> IntArray:
 
 def _log_radius(radius: FloatArray, label: IntArray, count: int) -> FloatArray:
     """Mean ln r of the good radii stated at each place; NaN where none is good."""
-    good = (radius > 0) & (radius < np.inf)
+    good = _is_good(radius)
     total = np.bincount(label[good], np.log(radius[good]), count)
     number = np.bincount(label[good], minlength=count)
     value: FloatArray = np.divide(total, number, out=np.full(count, np.nan), where=number > 0)
     return value
 
 
+def _is_good(radius: FloatArray) -> BoolArray:
+    """Whether a radius can be."""
+    good: BoolArray = (radius > 0) & (radius < np.inf)
+    return good
+
+
 def _edges(centrelines: Centrelines, used: IntArray, label: IntArray) -> IntArray:
-    """Places at both ends of every step, each pair once."""
-    place = label[np.searchsorted(used, centrelines.connectivity)]
+    """Places at both ends of every step as drawn, each pair once."""
+    number = np.zeros(centrelines.n_points, np.int64)
+    number[used] = label
+    place = number[centrelines.connectivity]
     inner = np.ones(len(place), np.bool_)
     inner[centrelines.offsets[1:] - 1] = False
-    start = np.flatnonzero(inner)
-    pairs = np.sort(np.stack((place[start], place[start + 1]), axis=1), axis=1)
-    pairs = pairs[pairs[:, 0] != pairs[:, 1]]
-    keys = pairs[:, 0] * np.int64(len(label) + 1) + pairs[:, 1]
-    kept: IntArray = pairs[np.unique(keys, return_index=True)[1]]
-    return kept
+    start = np.flatnonzero(inner[:-1] & (place[1:] != place[:-1]))
+    pairs = np.stack((place[start], place[start + 1]), axis=1)
+    keys = _keys(pairs, len(label))
+    ordered = np.sort(keys)
+    if (ordered[1:] != ordered[:-1]).all():
+        return pairs
+    return pairs[np.sort(np.unique(keys, return_index=True)[1])]
+
+
+def _keys(pairs: IntArray, count: int) -> IntArray:
+    """One number per pair of places, the same for both directions."""
+    low, high = np.minimum(pairs[:, 0], pairs[:, 1]), np.maximum(pairs[:, 0], pairs[:, 1])
+    key: IntArray = low * np.int64(count + 1) + high
+    return key
 
 
 def _has_steps(value: FloatArray, edges: IntArray, settings: RadiusSettings) -> bool:
@@ -155,17 +173,32 @@ def _has_steps(value: FloatArray, edges: IntArray, settings: RadiusSettings) -> 
     return bool((step > min(np.log(settings.spike_ratio), -np.log(max(settings.end_ratio, 1e-6)))).any())
 
 
-def _profile(points: FloatArray, value: FloatArray, edges: IntArray) -> _Profile:
+def _profile(raw_points: FloatArray, raw_of_place: IntArray, value: FloatArray, edges: IntArray) -> _Profile:
     """Chains of places with ln r and arc length along them."""
-    cut = chains(len(points), edges)
-    degree = degrees(len(points), edges)
-    first, last = cut.offsets[:-1], cut.offsets[1:] - 1
-    inner = np.ones(len(cut.point), np.bool_)
+    cut = chains(len(value), edges)
+    place, offsets = _in_order(cut, _keys(edges, len(value)))
+    degree = degrees(len(value), edges)
+    first, last = offsets[:-1], offsets[1:] - 1
+    inner = np.ones(len(place), np.bool_)
     inner[first] = inner[last] = False
-    open_start, open_end = (degree[cut.point[rows]] == 1 for rows in (first, last))
-    chain = np.repeat(np.arange(cut.n_chains), np.diff(cut.offsets))
-    place = points[cut.point]
-    return _Profile(cut, place, value[cut.point], arc_length(place, cut.offsets), chain, inner, open_start, open_end)
+    open_start, open_end = (degree[place[rows]] == 1 for rows in (first, last))
+    chain = np.repeat(np.arange(len(first)), np.diff(offsets))
+    points = raw_points.take(raw_of_place[place], axis=0)
+    along = arc_length(points, offsets)
+    return _Profile(place, offsets, points, value[place], along, chain, inner, open_start, open_end)
+
+
+def _in_order(cut: Chains, key: IntArray) -> tuple[IntArray, IntArray]:
+    """Places along chains, and offsets, in an order and direction that the order of the lines leaves no trace in."""
+    first, last = cut.offsets[:-1], cut.offsets[1:] - 1
+    start, end = key[cut.edge[cut.edge_offsets[:-1]]], key[cut.edge[cut.edge_offsets[1:] - 1]]
+    turned = (start > end) | ((last == first + 1) & (cut.point[first] > cut.point[last]))
+    order = np.argsort(np.minimum(start, end))
+    count = np.diff(cut.offsets)[order]
+    offsets = np.concatenate(([0], np.cumsum(count)))
+    way = np.where(turned[order], -1, 1)
+    row = np.where(turned, last, first)[order] - way * offsets[:-1]
+    return cut.point[np.repeat(row, count) + np.repeat(way, count) * np.arange(offsets[-1])], offsets
 
 
 _NOTHING, _IMPOSSIBLE, _SPIKE, _DECAY = range(4)
@@ -217,7 +250,7 @@ def _short_runs(found: BoolArray, chain: IntArray) -> BoolArray:
 def _decays(profile: _Profile, limit: float) -> BoolArray:
     """Rows at open ends that lie below the radius further in, from the end inwards."""
     found = np.zeros(len(profile.log_radius), np.bool_)
-    first, last = profile.cut.offsets[:-1], profile.cut.offsets[1:] - 1
+    first, last = profile.offsets[:-1], profile.offsets[1:] - 1
     count = last - first + 1
     for is_open, end, way in ((profile.open_start, first, 1), (profile.open_end, last, -1)):
         chain = np.flatnonzero(is_open & (count >= _NEAR_END))
@@ -241,19 +274,21 @@ def _row_medians(values: FloatArray) -> FloatArray:
 
 
 def _fitted(profile: _Profile, wrong: BoolArray) -> FloatArray:
-    """Ln r at each row from the good rows of its chain, linear in arc length; NaN where a chain has none."""
-    count = len(wrong)
-    rows = np.arange(count)
-    before = np.maximum.accumulate(np.where(wrong, -1, rows))
-    after = np.minimum.accumulate(np.where(wrong, count, rows)[::-1])[::-1]
-    has_before = (before >= 0) & (profile.chain[np.maximum(before, 0)] == profile.chain)
-    has_after = (after < count) & (profile.chain[np.minimum(after, count - 1)] == profile.chain)
+    """Ln r at wrong rows from the good rows of their chain, linear in arc length; NaN elsewhere and where there is none."""
+    rows, good = np.flatnonzero(wrong), np.flatnonzero(~wrong)
+    value = np.full(len(wrong), np.nan)
+    if len(rows) == 0 or len(good) == 0:
+        return value
+    above = np.searchsorted(good, rows)
+    before, after = good[np.maximum(above - 1, 0)], good[np.minimum(above, len(good) - 1)]
+    has_before = (above > 0) & (profile.chain[before] == profile.chain[rows])
+    has_after = (above < len(good)) & (profile.chain[after] == profile.chain[rows])
     low = np.where(has_before, before, np.where(has_after, after, rows))
     high = np.where(has_after, after, low)
     gap = profile.along[high] - profile.along[low]
-    part = np.where(gap > 0, (profile.along - profile.along[low]) / np.where(gap > 0, gap, 1.0), 0.0)
-    value: FloatArray = profile.log_radius[low] * (1 - part) + profile.log_radius[high] * part
-    value[~has_before & ~has_after] = np.nan
+    part = np.where(gap > 0, (profile.along[rows] - profile.along[low]) / np.where(gap > 0, gap, 1.0), 0.0)
+    value[rows] = profile.log_radius[low] * (1 - part) + profile.log_radius[high] * part
+    value[rows[~has_before & ~has_after]] = np.nan
     return value
 
 
@@ -270,7 +305,7 @@ def _records(
     starts = np.flatnonzero((kinds > 0) & ~np.concatenate(([False], same)))
     ends = np.flatnonzero((kinds > 0) & ~np.concatenate((same, [False]))) + 1
     mended = np.zeros(len(kinds), np.bool_)
-    anchors = raw_of_place[profile.cut.point[np.stack((starts, ends - 1), axis=1)]]
+    anchors = raw_of_place[profile.place[np.stack((starts, ends - 1), axis=1)]]
     ids = anchor_ids("radius", centrelines.raw_points, anchors)
     repairs = []
     for name, start, end in zip(ids.tolist(), starts.tolist(), ends.tolist(), strict=True):
@@ -329,7 +364,7 @@ def _with_radii(
     """The centrelines with the mended radii in all points of each place; a place on several chains takes their mean."""
     (fitted, mended), (used, label) = found, places
     count = int(label.max()) + 1
-    at = profile.cut.point[mended]
+    at = profile.place[mended]
     number = np.bincount(at, minlength=count)
     mean = np.bincount(at, fitted[mended], count) / np.maximum(number, 1)
     radius, basis = centrelines.radius.copy(), centrelines.radius_basis.copy()
@@ -339,7 +374,7 @@ def _with_radii(
     # a place with one good statement keeps it for those of its points that state none
     stated = radius[used]
     value = _log_radius(stated, label, count)[label]
-    lost = ~((stated > 0) & (stated < np.inf)) & ~changed & ~np.isnan(value)
+    lost = ~_is_good(stated) & ~changed & ~np.isnan(value)
     radius[used[lost]] = np.exp(value[lost])
     basis[used[lost]] = Basis.INTERPOLATED
     return replace(centrelines, radius=radius, radius_basis=basis)
