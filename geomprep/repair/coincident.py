@@ -45,7 +45,7 @@ def same_place(points: FloatArray) -> tuple[IntArray, IntArray]:
     order = np.argsort(key)
     equal_key = key[order[1:]] == key[order[:-1]]
     left, right = order[:-1][equal_key], order[1:][equal_key]
-    if not np.array_equal(bits[left], bits[right]):  # two places share a key
+    if not np.array_equal(bits.take(left, axis=0), bits.take(right, axis=0)):  # two places share a key
         order = np.lexsort((bits[:, 2], bits[:, 1], bits[:, 0]))
         equal_key = (bits[order[1:]] == bits[order[:-1]]).all(axis=1)
     new = np.ones(len(points), np.bool_)

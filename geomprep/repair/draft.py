@@ -19,6 +19,7 @@ __all__ = [
     "lengths",
     "merged",
     "point_radius",
+    "with_edge_rows",
     "without_edges",
 ]
 
@@ -77,7 +78,8 @@ def point_radius(draft: Draft) -> FloatArray:
 
 def lengths(draft: Draft) -> FloatArray:
     """Length of each edge."""
-    step = draft.points[draft.edges[:, 1]] - draft.points[draft.edges[:, 0]]
+    step = draft.points.take(draft.edges[:, 1], axis=0)
+    step -= draft.points.take(draft.edges[:, 0], axis=0)
     length: FloatArray = np.sqrt(np.einsum("ij,ij->i", step, step))
     return length
 
@@ -86,8 +88,17 @@ def without_edges(draft: Draft, dropped: npt.NDArray[np.bool_]) -> Draft:
     """The draft without the edges marked."""
     if not dropped.any():
         return draft
-    kept = ~dropped
-    return replace(draft, edges=draft.edges[kept], end_radius=draft.end_radius[kept], edge_class=draft.edge_class[kept])
+    return with_edge_rows(draft, np.flatnonzero(~dropped))
+
+
+def with_edge_rows(draft: Draft, rows: IntArray) -> Draft:
+    """The draft with some of its edges, in the order given."""
+    return replace(
+        draft,
+        edges=draft.edges.take(rows, axis=0),
+        end_radius=draft.end_radius.take(rows, axis=0),
+        edge_class=draft.edge_class[rows],
+    )
 
 
 def merged(draft: Draft, label: IntArray, keeps_place: npt.NDArray[np.bool_] | None = None) -> Draft:
@@ -105,17 +116,7 @@ def merged(draft: Draft, label: IntArray, keeps_place: npt.NDArray[np.bool_] | N
     members = np.bincount(label, minlength=count)
     first = np.empty(count, np.int64)
     first[label[::-1]] = np.arange(len(label) - 1, -1, -1)
-    new = replace(
-        draft,
-        points=draft.points[first],
-        vessel_class=draft.vessel_class[first],
-        input_id=draft.input_id[first],
-        radius_basis=draft.radius_basis[first],
-        source_point=draft.source_point[first],
-        end_state=draft.end_state[first],
-        edges=label[draft.edges],
-        merged_into=_relabelled(draft.merged_into, label),
-    )
+    new = _renumbered(draft, first, label)
     several = np.flatnonzero(members[label] > 1)
     if len(several):
         _settle(draft, new, several, label)
@@ -164,6 +165,8 @@ def _relabelled(merged_into: IntArray, label: IntArray) -> IntArray:
     """Follow raw points into new numbers; negative entries stay."""
     if len(label) == 0:
         return merged_into
+    if len(merged_into) and merged_into.min() >= 0:
+        return label[merged_into]
     return np.where(merged_into >= 0, label[np.maximum(merged_into, 0)], merged_into)
 
 
@@ -186,21 +189,23 @@ def compacted(draft: Draft) -> tuple[Draft, IntArray]:
     order = flat[mentioned]
     number = np.full(len(draft.points), -1, np.int64)
     number[order] = np.arange(len(order))
-    followed = _relabelled(draft.merged_into, number)
-    lost = np.flatnonzero((draft.merged_into >= 0) & (followed == -1)) if len(order) < len(number) else _NONE
-    return (
-        replace(
-            draft,
-            points=draft.points[order],
-            vessel_class=draft.vessel_class[order],
-            input_id=draft.input_id[order],
-            radius_basis=draft.radius_basis[order],
-            source_point=draft.source_point[order],
-            end_state=draft.end_state[order],
-            edges=number[draft.edges],
-            merged_into=followed,
-        ),
-        lost,
+    new = _renumbered(draft, order, number)
+    lost = np.flatnonzero((draft.merged_into >= 0) & (new.merged_into == -1)) if len(order) < len(number) else _NONE
+    return new, lost
+
+
+def _renumbered(draft: Draft, kept: IntArray, number: IntArray) -> Draft:
+    """The draft with the points kept, in their order, where every point gets a new number."""
+    return replace(
+        draft,
+        points=draft.points.take(kept, axis=0),
+        vessel_class=draft.vessel_class[kept],
+        input_id=draft.input_id[kept],
+        radius_basis=draft.radius_basis[kept],
+        source_point=draft.source_point[kept],
+        end_state=draft.end_state[kept],
+        edges=number.take(draft.edges),
+        merged_into=_relabelled(draft.merged_into, number),
     )
 
 

@@ -10,7 +10,7 @@ from geomprep.curves import piece_integrals
 from geomprep.model import BoolArray, FloatArray, IntArray, Repair, anchor_ids, raw_order
 from geomprep.repair.classes import may_join
 from geomprep.repair.coincident import group_pairs, near_pairs
-from geomprep.repair.draft import JOINED_ENDS, LEFT_ALONE, Draft, degree, lengths, merged, point_radius
+from geomprep.repair.draft import JOINED_ENDS, LEFT_ALONE, Draft, degree, merged, point_radius
 from geomprep.repair.runs import Runs
 from geomprep.repair.verdicts import Verdicts, settled
 
@@ -89,10 +89,17 @@ def _short_run_between(draft: Draft, laid: Runs, one: IntArray, other: IntArray)
     return found
 
 
-def run_conductance(draft: Draft, laid: Runs) -> FloatArray:
-    """Conductance of each run at unit viscosity, π / (8 ∫ds/r⁴)."""
-    resistance = piece_integrals(lengths(draft), draft.end_radius[:, 0], draft.end_radius[:, 1])[:, 3]
-    conductance: FloatArray = np.pi / 8.0 / np.add.reduceat(resistance, laid.offsets[:-1])
+def run_conductance(draft: Draft, laid: Runs, which: IntArray) -> FloatArray:
+    """Conductance of some runs at unit viscosity, π / (8 ∫ds/r⁴)."""
+    if len(which) == 0:
+        return np.empty(0)
+    count = laid.offsets[which + 1] - laid.offsets[which]
+    starts = np.cumsum(count) - count
+    edge = np.arange(count.sum()) + np.repeat(laid.offsets[which] - starts, count)
+    step = draft.points.take(draft.edges[edge, 1], axis=0) - draft.points.take(draft.edges[edge, 0], axis=0)
+    length = np.sqrt(np.einsum("ij,ij->i", step, step))
+    resistance = piece_integrals(length, draft.end_radius[edge, 0], draft.end_radius[edge, 1])[:, 3]
+    conductance: FloatArray = np.pi / 8.0 / np.add.reduceat(resistance, starts)
     return conductance
 
 
@@ -119,7 +126,7 @@ def _branch_conductance(draft: Draft, laid: Runs) -> FloatArray:
     run, _ = runs_at_ends(draft, laid)
     value = np.full(len(run), np.inf)
     tips = np.flatnonzero(degree(draft) == 1)
-    value[tips] = run_conductance(draft, laid)[run[tips]]
+    value[tips] = run_conductance(draft, laid, run[tips])
     return value
 
 

@@ -266,7 +266,7 @@ def _same_split(draft: Draft, edge: IntArray, part: FloatArray, point: IntArray,
 def _records(draft: Draft, layout: Layout, contacts: _Contacts) -> tuple[Repair, ...]:
     """One repair per joint."""
     own, _ = runs_at_ends(draft, layout.runs)
-    conductance = run_conductance(draft, layout.runs)[own[contacts.node]].tolist()
+    conductance = run_conductance(draft, layout.runs, own[contacts.node]).tolist()
     source = draft.source_point[contacts.node]
     ids = anchor_ids("t-joint", draft.raw_points, source[:, None])
     radius = between(draft.end_radius, contacts.edge, contacts.part)

@@ -77,7 +77,8 @@ def runs(draft: Draft) -> Runs:
     start = np.ones(len(draft.edges), np.bool_)
     start[1:] = (draft.edges[:-1, 1] != draft.edges[1:, 0]) | ~through[draft.edges[1:, 0]]
     first = np.flatnonzero(start)
-    step = lengths(draft) / draft.end_radius.mean(axis=1)
+    step = lengths(draft)
+    step /= (draft.end_radius[:, 0] + draft.end_radius[:, 1]) / 2.0
     return Runs(
         offsets=np.append(first, len(start)),
         of_edge=np.cumsum(start) - 1,
@@ -138,8 +139,11 @@ def between(values: FloatArray, edge: IntArray, part: FloatArray) -> FloatArray:
 
 def places_on(draft: Draft, edge: IntArray, part: FloatArray) -> FloatArray:
     """Positions at a fraction of edges."""
-    start, end = draft.points[draft.edges[edge, 0]], draft.points[draft.edges[edge, 1]]
-    place: FloatArray = start + part[:, None] * (end - start)
+    start = draft.points.take(draft.edges[edge, 0], axis=0)
+    place: FloatArray = draft.points.take(draft.edges[edge, 1], axis=0)
+    place -= start
+    place *= part[:, None]
+    place += start
     return place
 
 
@@ -166,7 +170,7 @@ def nearest_on(
     starts = np.cumsum(count) - count
     query = np.repeat(np.arange(len(count)), count)
     edge = np.arange(len(query)) - np.repeat(starts - first, count)
-    part, distance = foot(draft, places[query], edge)
+    part, distance = foot(draft, places.take(query, axis=0), edge)
     least = np.minimum.reduceat(distance, starts) if len(starts) else distance
     # the first edge of each range that is as near as the nearest
     hit = np.flatnonzero(distance == least[query])
@@ -176,8 +180,8 @@ def nearest_on(
 
 def foot(draft: Draft, places: FloatArray, edge: IntArray) -> tuple[FloatArray, FloatArray]:
     """Fraction of an edge nearest to each place, and the distance to it."""
-    start = draft.points[draft.edges[edge, 0]]
-    return nearest_part(places, start, draft.points[draft.edges[edge, 1]] - start)
+    start = draft.points.take(draft.edges[edge, 0], axis=0)
+    return nearest_part(places, start, draft.points.take(draft.edges[edge, 1], axis=0) - start)
 
 
 def nearest_part(places: FloatArray, start: FloatArray, step: FloatArray) -> tuple[FloatArray, FloatArray]:

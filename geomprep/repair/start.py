@@ -43,13 +43,13 @@ def started(centrelines: Centrelines) -> tuple[Draft, tuple[Finding, ...]]:
     input_of = np.zeros(centrelines.n_points, np.uint8)
     input_of[edges] = centrelines.input_id[line][:, None]
     draft = Draft(
-        points=centrelines.points[keep],
+        points=centrelines.points.take(keep, axis=0),
         vessel_class=group_class,
         input_id=input_of[keep],
         radius_basis=_worst_basis(centrelines, used.raw, label, keep),
         source_point=keep,
         end_state=np.zeros(len(keep), np.uint8),
-        edges=label[used.edges],
+        edges=label.take(used.edges),
         end_radius=_stated_radius(centrelines, edges, line),
         edge_class=edge_class,
         merged_into=merged_into,
