@@ -39,8 +39,7 @@ class NarrowingSettings:
     scatter_multiple : float
         The logarithm of the ratio must exceed so many times the scatter of the reference stations.
     reach, gap : float
-        In reference radii: how far to each side the reference is taken, and the distance below which
-        two lesions are one.
+        In reference radii: how far to each side the reference is taken; how near two lesions are one.
     focal_length : float
         A lesion longer than this, in reference radii, is a long small (or wide) stretch.
     """
@@ -319,9 +318,10 @@ def _measured(here: _Segment, own: BoolArray, widening: bool, settings: Narrowin
 def _local_reference(here: _Segment, first: int, last: int, reach: float) -> _Reference:
     """Line through the stations on both sides of a lesion, or the segment's line moved onto those of one side."""
     s, size = here.distance, float(here.line[first : last + 1].mean())
-    margin = max(_MARGIN * (s[last] - s[first]), 0.5 * size)
-    before = here.usable & (s <= s[first] - margin) & (s >= s[first] - margin - reach * size)
-    after = here.usable & (s >= s[last] + margin) & (s <= s[last] + margin + reach * size)
+    near = max(_MARGIN * (s[last] - s[first]), 0.5 * size) - 1e-9 * s[-1]  # stations on the border count
+    far = near + reach * size + 2e-9 * s[-1]
+    before = here.usable & (s <= s[first] - near) & (s >= s[first] - far)
+    after = here.usable & (s >= s[last] + near) & (s <= s[last] + far)
     sides = [side for side in (before, after) if np.count_nonzero(side) >= _LEAST_STATIONS]
     if not sides:
         return _Reference(here.line, 0.0, 0, np.nan)
@@ -366,7 +366,7 @@ def _extreme(here: _Segment, depth: FloatArray, stretch: tuple[int, int, int], s
     place, height = raw
     s, d = here.distance[first : last + 1], depth[first : last + 1]
     for _ in range(_PASSES):
-        core = (np.abs(s - place) <= size) & (d >= 0.5 * raw[1])
+        core = (np.abs(s - place) <= size * (1 + 1e-9)) & (d >= 0.5 * raw[1])
         if np.count_nonzero(core) < 5:
             return raw
         x = s[core] - place
