@@ -104,7 +104,7 @@ def _entries(row: Field, filled: BoolArray, origins: list[Origin]) -> Iterator[d
             f"{row.path} row {np.flatnonzero(filled & (choice < 0))[0]} has no basis; "
             "the stage that sets it must say where it comes from (an Origin)"
         )
-    for number in np.unique(choice[filled]).tolist():
+    for number in (np.flatnonzero(np.bincount(choice[filled] + 1)) - 1).tolist():
         kind, detail = row.basis, row.basis_detail
         if number >= 0:
             kind, detail = BASIS_NAMES[origins[number].basis], origins[number].detail

@@ -73,8 +73,15 @@ def _held(network: Network, row: Field) -> Any:
     if not isinstance(value, np.ndarray):
         return value
     if row.type == "number":
-        return np.ascontiguousarray(value) + 0.0  # no negative zeros
+        return _without_negative_zeros(np.ascontiguousarray(value))
     return value.tolist() if value.dtype == object else np.ascontiguousarray(value)
+
+
+def _without_negative_zeros(values: np.ndarray[Any, Any]) -> np.ndarray[Any, Any]:
+    """The same numbers, and the same array where none is a negative zero."""
+    if values.dtype == np.float64 and not (values.view(np.int64) == np.iinfo(np.int64).min).any():
+        return values
+    return values + 0.0
 
 
 def _named(codes: np.ndarray[Any, Any], names: tuple[str, ...]) -> list[str]:

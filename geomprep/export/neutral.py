@@ -100,9 +100,8 @@ def write_network(
     written: tuple[Path, ...] = (target,)
     keep = None
     if len(network.stations) > MOST_STATIONS_INSIDE:
-        stations = document["stations"]
-        block = write_companion(target.parent, stations)
-        inside = {name: value for name, value in stations.items() if name not in _COMPANION_NAMES}
+        block = write_companion(target.parent, document["stations"])
+        inside = {name: value for name, value in document["stations"].items() if name not in _COMPANION_NAMES}
         document["stations"] = {**inside, "companion": block}
         keep = block["file"]
         written = (target.parent / keep, target)

@@ -104,15 +104,15 @@ def _heading(network: Network, state: SteadyState, context: ExportContext, shown
 
 def _proportions(network: Network, view: View, shown: list[int]) -> list[str]:
     """Every segment as the outline of its lumen."""
-    place = view.place(network.stations.position)
     offsets, radius = network.stations.offsets, network.stations.radius
-    colours = [_COLOURS[VESSEL_CLASSES[code]] for code in network.segments.vessel_class.tolist()]
     drawn = []
     for row in shown:
         first, last = int(offsets[row]), int(offsets[row + 1])
         step = max(1, (last - first) // _MOST_CORNERS)
         rows = np.unique(np.append(np.arange(first, last, step), last - 1))
-        drawn.append(_outline(place[rows], np.maximum(0.3, view.scale * radius[rows]), colours[row]))
+        place = view.place(network.stations.position[rows])
+        colour = _COLOURS[VESSEL_CLASSES[int(network.segments.vessel_class[row])]]
+        drawn.append(_outline(place, np.maximum(0.3, view.scale * radius[rows]), colour))
     return drawn
 
 

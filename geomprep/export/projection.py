@@ -82,7 +82,7 @@ def chosen_view(network: Network, frame: str, size: float) -> View:
     From the front the patient's left is on the right of the picture, the head is up.
     """
     position = network.stations.position
-    low, high = position.min(axis=0), position.max(axis=0)
+    low, high = (np.array([end(axis) for axis in position.T]) for end in (np.min, np.max))
     letters = frame if len(frame) == 3 else ""
     if letters:
         across, down, sides = _body_axes(letters, high - low)

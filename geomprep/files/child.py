@@ -197,3 +197,4 @@ def _gather_mesh(mesh: Any) -> tuple[dict[str, Any], list[tuple[str, str, Any]]]
 
 if __name__ == "__main__":
     main()
+    os._exit(0)  # the parent waits; what the library would free piece by piece goes with the process

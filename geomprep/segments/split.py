@@ -75,7 +75,9 @@ def split(graph: PointGraph) -> Network:
 def _raw_rank(graph: PointGraph, which: IntArray) -> IntArray:
     """Rank of some graph points by their raw coordinates; inserted points by their position, last."""
     rank = np.full(graph.n_points, -1, np.int64)
-    which = np.unique(which)
+    named = np.zeros(graph.n_points, np.bool_)
+    named[which] = True
+    which = np.flatnonzero(named)
     known, inserted = which[graph.source_point[which] >= 0], which[graph.source_point[which] < 0]
     order = known[raw_order(graph.raw_points, graph.source_point[known])]
     rank[order] = np.arange(len(order))
@@ -111,7 +113,9 @@ def _canonical_chains(graph: PointGraph) -> Chains:
 
 def _node_points(cut: Chains, rank: IntArray) -> IntArray:
     """Graph points that become nodes, in raw order."""
-    ends = np.unique(np.concatenate((cut.point[cut.offsets[:-1]], cut.point[cut.offsets[1:] - 1])))
+    named = np.zeros(len(rank), np.bool_)
+    named[cut.point[cut.offsets[:-1]]] = named[cut.point[cut.offsets[1:] - 1]] = True
+    ends = np.flatnonzero(named)
     return ends[np.argsort(rank[ends], kind="stable")]
 
 
@@ -214,7 +218,7 @@ def _stations(graph: PointGraph, cut: Chains, own: FloatArray) -> Stations:
     radius = graph.radius[cut.point]
     radius[cut.offsets[:-1]] = own[:, 0]
     radius[cut.offsets[1:] - 1] = own[:, 1]
-    position = graph.points[cut.point]
+    position = graph.points.take(cut.point, axis=0)
     return Stations(
         offsets=cut.offsets,
         distance=arc_length(position, cut.offsets),
