@@ -7,7 +7,7 @@ it. A line through the stations beside each such place then gives its reference,
 from __future__ import annotations
 
 from dataclasses import dataclass, fields
-from typing import Any, NamedTuple
+from typing import NamedTuple
 
 import numpy as np
 
@@ -21,7 +21,7 @@ __all__ = ["NarrowingSettings", "Narrowings", "narrowings"]
 
 _SAMPLES = 65  # places at which the line through a whole segment looks at it
 _PASSES = 3  # of extent and reference in turn
-_LEAST_STATIONS = 3  # on a side, for a reference from there
+_COLUMNS = ("start", "end", "place", "radius", "reference_radius", "scatter")
 _MARGIN = 0.25  # of the length of the lesion: its faint feet, kept out of the reference
 
 
@@ -34,14 +34,12 @@ class NarrowingSettings:
     least_narrowing, least_widening : float
         Smallest loss and gain of diameter, as a part of the reference, that are listed.
     edge : float
-        A lesion starts and ends where the radius leaves the reference by this part of it, or by
-        twice the scatter from station to station where that is more.
+        A lesion ends where the radius is off by this part of the reference, or twice the scatter if more.
     scatter_multiple : float
         The logarithm of the ratio must exceed so many times the scatter of the reference stations.
-    reach, gap : float
-        In reference radii: how far to each side the reference is taken; how near two lesions are one.
-    focal_length : float
-        A lesion longer than this, in reference radii, is a long small (or wide) stretch.
+    reach, gap, focal_length : float
+        In reference radii: how far to each side the reference is taken; how near two lesions are one;
+        the length above which a lesion is a long small (or wide) stretch.
     """
 
     least_narrowing: float = 0.2
@@ -77,8 +75,8 @@ class Narrowings:
     start, end, place : (k,) float array
         Distance along the segment of both edges and of the extreme radius, m.
     radius, area : (k,) float array
-        Extreme radius, m, and π times its square, m²: of the smallest (largest) station, or of a
-        parabola through the stations about it where these agree within their scatter.
+        Extreme radius, m, and π times its square, m²: of one station, or of a parabola through the
+        stations about it where these agree within their scatter.
     reference_radius : (k,) float array
         Radius expected at `place` from the vessel beside the lesion, m.
     degree_by_diameter, degree_by_area : (k,) float array
@@ -137,22 +135,6 @@ class _Reference(NamedTuple):
     distal_radius: float
 
 
-class _Lesion(NamedTuple):
-    """One row of the result."""
-
-    widening: bool
-    station: int
-    start: float
-    end: float
-    place: float
-    radius: float
-    reference_radius: float
-    sides: int
-    scatter: float
-    distal_radius: float
-    segment: int = -1
-
-
 def narrowings(
     distance: FloatArray,
     radius: FloatArray,
@@ -197,8 +179,7 @@ def narrowings(
     Examples
     --------
     >>> s = np.linspace(0.0, 60e-3, 121)
-    >>> r = 2e-3 - 1.4e-3 * np.exp(-(((s - 30e-3) / 3e-3) ** 2))
-    >>> found = narrowings(s, r, np.array([0, 121]))
+    >>> found = narrowings(s, 2e-3 - 1.4e-3 * np.exp(-(((s - 30e-3) / 3e-3) ** 2)), np.array([0, 121]))
     >>> found.place.round(4).tolist(), found.radius.round(6).tolist(), found.degree_by_diameter.round(3).tolist()
     ([0.03], [0.0006], [0.7])
     """
@@ -209,35 +190,51 @@ def narrowings(
     arterial = np.zeros(len(offsets) - 1, np.bool_) if arterial is None else arterial
     if len(arterial) != len(offsets) - 1:
         raise InputError(f"arterial: {len(arterial)} values for {len(offsets) - 1} segments; give one per segment")
-    line, logarithmic = _robust_lines(distance, radius, usable, offsets)
     noise = station_scatter(distance, radius, usable, offsets)
     edge = np.maximum(-np.log1p(-settings.edge), 2 * noise)
+    level = usable & _level(np.log(radius), usable, 0.5 * _least_depth(settings, False) + 4 * noise, offsets)
+    line, logarithmic = _robust_lines(distance, radius, np.stack((level, usable), axis=1), offsets)
     depth = np.where(usable, np.log(line / radius), 0.0)
-    label, owner = _candidates(distance, depth, line, edge, offsets, settings)
-    found = []
+    label, owner, weak = _candidates(distance, depth, line, edge, offsets, settings)
+    found: dict[tuple[float, float], dict[str, float]] = {}
     for number, segment in enumerate(owner.tolist()):
         rows = slice(offsets[segment], offsets[segment + 1])
         own = label[rows] == number
-        free = usable[rows] & ((label[rows] < 0) | own)
+        free = usable[rows] & ((label[rows] < 0) | own | weak[label[rows]])
         here = _Segment(
             distance[rows], radius[rows], free, line[rows], *(of[segment] for of in (logarithmic, noise, edge))
         )
         lesion = _measured(here, own, bool(depth[rows][own].max() <= 0), settings)
-        if lesion is not None:
-            found.append(lesion._replace(segment=segment, station=int(offsets[segment]) + lesion.station))
-    return _table(found, arterial, settings)
+        if lesion is not None:  # two candidates may have grown into one
+            lesion |= {"segment": segment, "station": lesion["station"] + int(offsets[segment])}
+            found[lesion["station"], lesion["widening"]] = lesion
+    return _table([found[key] for key in sorted(found)], arterial, settings)
+
+
+def _level(log: FloatArray, usable: BoolArray, least: FloatArray, offsets: IntArray) -> BoolArray:
+    """Tell stations that lie in no hollow or bump: filled up to its lower shoulder, it is deeper than the least."""
+    segment = np.repeat(np.arange(len(least)), np.diff(offsets))
+    lift = segment * (1.0 + 2 * np.ptp(log)) if len(log) else log  # running maxima start afresh in every segment
+    level = np.ones(len(log), np.bool_)
+    for y in (log, -log):
+        seen = np.where(usable, y, y.min()) if len(y) else y
+        before = np.maximum.accumulate(seen + lift) - lift
+        after = np.maximum.accumulate((seen - lift)[::-1])[::-1] + lift
+        level &= np.minimum(before, after) - y <= least[segment]
+    return level
 
 
 def _robust_lines(
-    distance: FloatArray, radius: FloatArray, usable: BoolArray, offsets: IntArray
+    distance: FloatArray, radius: FloatArray, wanted: BoolArray, offsets: IntArray
 ) -> tuple[FloatArray, BoolArray]:
-    """Line through each segment, in r or in ln r, whichever lies nearer; not a number where little is usable."""
+    """Line in r or ln r, whichever lies nearer, through the first column of stations or, if too few, the second."""
     m, count = len(offsets) - 1, np.diff(offsets)
     length = distance[offsets[1:] - 1]
     part = np.linspace(0.0, 1.0, _SAMPLES)
     segment, at = np.repeat(np.arange(m), _SAMPLES), (length[:, None] * part).ravel()
-    sampled = interpolate(distance, np.stack((radius, usable), axis=1), offsets, segment, at)
-    r, known = sampled[:, 0].reshape(m, _SAMPLES), sampled[:, 1].reshape(m, _SAMPLES) > 1 - 1e-9
+    sampled = interpolate(distance, np.column_stack((radius, wanted)), offsets, segment, at).reshape(m, _SAMPLES, 3)
+    r, level, usable = sampled[:, :, 0], sampled[:, :, 1] > 1 - 1e-9, sampled[:, :, 2] > 1 - 1e-9
+    known = np.where(level.sum(axis=1, keepdims=True) >= _SAMPLES // 4, level, usable)
     plain, logs = repeated_medians(part, r, known), repeated_medians(part, np.log(r), known)
     crossing = ~((plain[:, 0] > 0) & (plain.sum(axis=1) > 0))
     plain[crossing] = [1.0, 0.0]  # never chosen
@@ -258,8 +255,8 @@ def _candidates(
     edge: FloatArray,
     offsets: IntArray,
     settings: NarrowingSettings,
-) -> tuple[IntArray, IntArray]:
-    """Number every stretch off the line by half of what is listed, or more: its stations' label, its segment."""
+) -> tuple[IntArray, IntArray, BoolArray]:
+    """Stretches off the line by half of what is listed: number at each station (−1 none), segment, less than listed."""
     segment = np.repeat(np.arange(len(edge)), np.diff(offsets))
     state = (depth > edge[segment]).astype(np.int64) - (depth < -edge[segment])
     new = np.ones(len(state), np.bool_)
@@ -272,11 +269,11 @@ def _candidates(
     first, last = first[np.append(True, ~joined)[: len(first)]], last[np.append(~joined, True)[: len(last)]]
     bounds = np.stack((first, last + 1), axis=1).ravel()
     peak = np.maximum.reduceat(np.append(np.abs(depth), 0.0), bounds)[::2] if len(first) else np.zeros(0)
-    kept = peak >= 0.5 * np.where(state[first] > 0, _least_depth(settings, False), _least_depth(settings, True))
-    first, last = first[kept], last[kept]
+    part = peak / np.where(state[first] > 0, _least_depth(settings, False), _least_depth(settings, True))
+    first, last, weak = first[part >= 0.5], last[part >= 0.5], part[part >= 0.5] < 1
     row = np.arange(len(state))
     number = np.searchsorted(first, row, side="right") - 1  # the stretch that begins here or before, −1 if none
-    return np.where(row <= np.append(last, -1)[number], number, -1), segment[first]
+    return np.where(row <= np.append(last, -1)[number], number, -1), segment[first], np.append(weak, False)
 
 
 def _least_depth(settings: NarrowingSettings, widening: bool) -> float:
@@ -284,7 +281,7 @@ def _least_depth(settings: NarrowingSettings, widening: bool) -> float:
     return float(np.log1p(settings.least_widening) if widening else -np.log1p(-settings.least_narrowing))
 
 
-def _measured(here: _Segment, own: BoolArray, widening: bool, settings: NarrowingSettings) -> _Lesion | None:
+def _measured(here: _Segment, own: BoolArray, widening: bool, settings: NarrowingSettings) -> dict[str, float] | None:
     """Reference and extent in turn, then the extreme; None where it is no lesion after all."""
     rows = np.flatnonzero(own)
     first, last = int(rows[0]), int(rows[-1])
@@ -301,28 +298,27 @@ def _measured(here: _Segment, own: BoolArray, widening: bool, settings: Narrowin
     if height < least * (1 - 1e-12):
         return None
     expected = float(np.interp(place, here.distance, reference.radius))
-    return _Lesion(
-        widening=widening,
-        station=peak,
-        start=_crossing(here.distance, depth, first, first - 1, here.edge),
-        end=_crossing(here.distance, depth, last, last + 1, here.edge),
-        place=place,
-        radius=expected * float(np.exp(height if widening else -height)),
-        reference_radius=expected,
-        sides=reference.sides,
-        scatter=reference.scatter,
-        distal_radius=reference.distal_radius,
-    )
+    return {
+        "widening": widening,
+        "station": peak,
+        "start": _crossing(here.distance, depth, first, first - 1, here.edge),
+        "end": _crossing(here.distance, depth, last, last + 1, here.edge),
+        "place": place,
+        "radius": expected * float(np.exp(height if widening else -height)),
+        "reference_radius": expected,
+        **{name: getattr(reference, name) for name in ("sides", "scatter", "distal_radius")},
+    }
 
 
 def _local_reference(here: _Segment, first: int, last: int, reach: float) -> _Reference:
     """Line through the stations on both sides of a lesion, or the segment's line moved onto those of one side."""
     s, size = here.distance, float(here.line[first : last + 1].mean())
-    near = max(_MARGIN * (s[last] - s[first]), 0.5 * size) - 1e-9 * s[-1]  # stations on the border count
-    far = near + reach * size + 2e-9 * s[-1]
-    before = here.usable & (s <= s[first] - near) & (s >= s[first] - far)
-    after = here.usable & (s >= s[last] + near) & (s <= s[last] + far)
-    sides = [side for side in (before, after) if np.count_nonzero(side) >= _LEAST_STATIONS]
+    margin = max(_MARGIN * (s[last] - s[first]), 0.5 * size)
+    beside = []
+    for away in (s[first] - s, s - s[last]):
+        near = min(margin, 0.25 * away.max()) - 1e-9 * s[-1]  # stations on the border count
+        beside.append(here.usable & (away > 0) & (away >= near) & (away <= near + reach * size + 2e-9 * s[-1]))
+    sides = [side for side in beside if np.count_nonzero(side) >= 2]
     if not sides:
         return _Reference(here.line, 0.0, 0, np.nan)
     chosen = np.logical_or.reduce(sides)
@@ -337,8 +333,7 @@ def _local_reference(here: _Segment, first: int, last: int, reach: float) -> _Re
         fitted = here.line * np.exp(offset)
     off = np.log(here.radius[chosen] / fitted[chosen])
     scatter = np.sqrt(np.average(off**2, weights=weights**2) * len(off) / max(len(off) - len(sides), 1))
-    seen = np.count_nonzero(after) >= _LEAST_STATIONS
-    distal = np.average(here.radius[after], weights=np.gradient(s)[after]) if seen else np.nan
+    distal = np.average(here.radius[beside[1]], weights=np.gradient(s)[beside[1]]) if beside[1].any() else np.nan
     return _Reference(fitted, float(scatter), len(sides), float(distal))
 
 
@@ -367,33 +362,38 @@ def _extreme(here: _Segment, depth: FloatArray, stretch: tuple[int, int, int], s
     s, d = here.distance[first : last + 1], depth[first : last + 1]
     for _ in range(_PASSES):
         core = (np.abs(s - place) <= size * (1 + 1e-9)) & (d >= 0.5 * raw[1])
-        if np.count_nonzero(core) < 5:
+        if np.count_nonzero(core) < 6:  # twice the values of a parabola
             return raw
         x = s[core] - place
         bend, slope, level = np.polyfit(x / size, d[core], 2)
         shift = float(np.clip(-0.5 * slope / bend * size, x[0], x[-1])) if bend < 0 else 0.0
         height = float(level + slope * shift / size + bend * (shift / size) ** 2)
         place += shift
-    return (place, height) if abs(height - raw[1]) <= 3 * here.noise else raw
+        rest = d[core] - np.polyval((bend, slope, level), x / size)
+    agrees = abs(height - raw[1]) <= 3 * here.noise and np.sqrt(np.mean(rest**2)) <= 2 * here.noise
+    return (place, height) if agrees else raw
 
 
-def _table(found: list[_Lesion], arterial: BoolArray, settings: NarrowingSettings) -> Narrowings:
+def _table(found: list[dict[str, float]], arterial: BoolArray, settings: NarrowingSettings) -> Narrowings:
     """Columns of all lesions."""
-    column: dict[str, Any] = {name: np.array([getattr(row, name) for row in found], float) for name in _Lesion._fields}
-    whole: dict[str, Any] = {name: column.pop(name).astype(np.int64) for name in ("segment", "station", "sides")}
-    widening, distal = column.pop("widening").astype(np.bool_), column.pop("distal_radius")
+    column = {name: np.array([row[name] for row in found], np.float64) for name in (*_COLUMNS, "distal_radius")}
+    segment, station, sides, widening = (
+        np.array([row[name] for row in found], np.int64) for name in ("segment", "station", "sides", "widening")
+    )
     expected, length = column["reference_radius"], column["end"] - column["start"]
     ratio = column["radius"] / expected
-    graded = arterial[whole["segment"]] & ~widening
+    graded = arterial[segment] & (widening == 0)
     return Narrowings(
-        **whole,
-        **column,
-        widening=widening,
+        **{name: column[name] for name in _COLUMNS},
+        segment=segment,
+        station=station,
+        sides=sides,
+        widening=widening != 0,
         area=np.pi * column["radius"] ** 2,
         degree_by_diameter=np.abs(1 - ratio),
         degree_by_area=np.abs(1 - ratio**2),
         length=length,
-        focal=(whole["sides"] == 2) & (length <= settings.focal_length * expected),
-        against_distal=np.where(graded, 1 - column["radius"] / distal, np.nan),
+        focal=(sides == 2) & (length <= settings.focal_length * expected),
+        against_distal=np.where(graded, 1 - column["radius"] / column["distal_radius"], np.nan),
         against_original=np.where(graded, 1 - ratio, np.nan),
     )

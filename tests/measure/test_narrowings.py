@@ -88,9 +88,26 @@ def test_phantoms(noise: float, smooth: int) -> None:
     error = np.abs(found.degree_by_diameter - depth)
     off = np.abs(found.place - place)
     assert np.median(error) < (0.01 if noise < 0.05 else 0.015)
-    assert error.max() < 0.08
+    # at worst one station of at most 0.7 of the reference stands for the throat, 3 standard deviations off
+    assert error.max() < 0.03 + 3 * noise * 0.7
     assert np.median(off) < 0.15e-3
     assert off.max() < (1e-3 if noise < 0.05 else 2e-3)
+
+
+def test_lesion_that_fills_half_of_a_short_segment() -> None:
+    """Level for 10 mm, narrow from 10 to 33 mm with the throat at 26 mm, in 34 mm: still seen from both sides."""
+    s = np.linspace(0, 34e-3, 35)
+    dip = np.interp(s, [10e-3, 18e-3, 26e-3, 33e-3], [0, 0.4, 0.55, 0.0])
+    found = found_in(3.4e-3 * (1 - dip), s)
+    assert len(found.segment) == 1
+    assert found.place[0] == pytest.approx(26e-3)
+    assert found.degree_by_diameter[0] == pytest.approx(0.55, abs=0.02)
+    assert (found.sides[0], found.widening[0], found.focal[0]) == (2, False, True)
+    rng = np.random.default_rng(6)
+    noisy = 3.4e-3 * (1 - dip) * np.exp(0.02 * rng.standard_normal((100, 35)))
+    many = narrowings(np.tile(s, 100), noisy.ravel(), np.arange(101) * 35)
+    deepest = [many.degree_by_diameter[(many.segment == i) & ~many.widening].max() for i in range(100)]
+    assert np.median(np.abs(np.array(deepest) - 0.55)) < 0.03
 
 
 def test_without_noise_place_and_degree_are_those_of_the_nearest_station() -> None:
