@@ -29,7 +29,7 @@ from geomprep.case.sections import (
     WallsSection,
 )
 from geomprep.case.values import read_value
-from geomprep.errors import CaseError
+from geomprep.errors import CaseError, InputError
 from geomprep.repair import STEPS
 
 __all__ = ["read_case"]
@@ -198,7 +198,13 @@ class _Reading:
                 self.faults.append(f'{path}.{key}: missing; write e.g. {key} = "{row.example}"')
             elif row.default:
                 self._put(values, row.default, row, path)
-        return _RECORDS[name](**values) if len(self.faults) == before else None
+        if len(self.faults) > before:
+            return None
+        try:
+            return _RECORDS[name](**values)
+        except InputError as fault:  # values that do not go together
+            self.faults.append(str(fault) if str(fault).startswith(path) else f"{path}: {fault}")
+            return None
 
     def _put(self, values: dict[str, Any], value: Any, row: Key, path: str) -> None:
         """Read one value, or note its fault."""

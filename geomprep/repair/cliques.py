@@ -105,7 +105,7 @@ def _knots(branches: Branches, settings: CliqueSettings) -> _Knots:
     at = np.unique(ends[short])
     links = np.bincount(label[ends[short, 0]], minlength=label.max(initial=0) + 1)
     nodes = np.bincount(label[at], minlength=len(links))
-    looped = links >= np.maximum(nodes, 1)
+    looped = (links >= nodes) & (nodes >= 3)  # arms between two junctions alone are a hole or a loop
     number = np.where(looped, np.cumsum(looped) - 1, -1)
     of_chain = number[label[ends[short, 0]]]
     short, of_chain = short[of_chain >= 0], of_chain[of_chain >= 0]

@@ -29,7 +29,7 @@ _REACH = 6.0
 """Radii beyond which nothing is looked for: distances above 3 radii all count the same."""
 _PAIR = 2.0
 """Two lines within x of a common middle line are within 2 x of one another."""
-_OPTIONS = ("fuse", "leave")
+_OPTIONS = ("leave", "fuse")
 _WEAK = 3.0
 """Single samples may lie this many times further apart than the average."""
 
@@ -58,7 +58,7 @@ def fuse_copies(
     Draft
         The same object where nothing was fused.
     repairs : tuple of Repair
-        One per absorbed stretch, and per line that a person left.
+        One per absorbed stretch, per line that a person left, and per vein that a person is asked about.
     findings : tuple of Finding
         Veins left side by side.
     """
@@ -130,9 +130,14 @@ def _absorbed_in_turn(
         stays = np.ones(end - start, np.bool_)
         if len(forest):
             beside = _beside(state, forest, samples, run)
-            stretches, aside = _decided(draft, run, beside, state, settings)
-            findings += aside
-            declined = _declined(draft, run, stretches, verdicts)
+            stretches, aside, asked = _decided(draft, run, beside, state, settings)
+            if aside:
+                asks, stretches = _asked(draft, run, (stretches, aside, asked), verdicts)
+                left.append(asks)
+                if asks.choice == "leave":
+                    findings += [_veins_finding(run, stretch) for stretch in aside]
+                    _leave_alone(state, run, beside, aside)
+            declined = None if aside else _declined(draft, run, stretches, verdicts)
             if declined is not None:
                 left.append(declined)
                 _leave_alone(state, run, beside, stretches)
@@ -147,6 +152,24 @@ def _absorbed_in_turn(
         state.keep(np.unique(run.edge[~state.gone[run.edge]]))
         forest.add(start + np.flatnonzero(stays), samples.point)
     return state, tuple(left), tuple(findings)
+
+
+def _asked(
+    draft: Draft, run: Samples, found: tuple[list[Stretch], list[Stretch], list[Stretch]], verdicts: Verdicts
+) -> tuple[Repair, list[Stretch]]:
+    """The question about a vein along another one, and the stretches to absorb by what is decided on it."""
+    exact, aside, close = found
+    anchors = draft.source_point[line_anchors(draft, run)]
+    name = str(anchor_ids("overlapping-veins", draft.raw_points, anchors[None])[0])
+    verdict = verdicts.settle(name, _OPTIONS, None)
+    x, y, z = run.point[(aside[0].first + aside[0].last) // 2].tolist()
+    radii = sum(run.along[stretch.last] - run.along[stretch.first] for stretch in aside)
+    reason = (
+        f"a vein lies within another for {radii:.3g} radii, {aside[0].mean_distance:.2g} of the radius apart on average: "
+        "a copy, or a doubled vein, which is real"
+    )
+    record = Repair(name, "overlapping veins", reason, (x, y, z), verdict.choice, _OPTIONS, verdict.by)
+    return record, close if verdict.choice == "fuse" else exact
 
 
 def _declined(draft: Draft, run: Samples, stretches: list[Stretch], verdicts: Verdicts) -> Repair | None:
@@ -193,15 +216,15 @@ def _beside(state: Fusing, forest: Forest, samples: Samples, run: Samples) -> Be
 
 def _decided(
     draft: Draft, run: Samples, beside: Beside, state: Fusing, settings: JoinSettings
-) -> tuple[list[Stretch], list[Finding]]:
-    """Stretches to absorb, and veins that stay side by side."""
+) -> tuple[list[Stretch], list[Stretch], list[Stretch]]:
+    """Stretches to absorb, those of veins that are asked about, and all that are close enough."""
     ends = draft.edges[run.edge[0], 0], draft.edges[run.edge[-1], 1]
     open_ends = bool(state.degree[ends[0]] == 1), bool(state.degree[ends[1]] == 1)
     apart = _PAIR * settings.copies_within
     close = Limits(apart, settings.copies_overlap, settings.copies_radius_ratio)
     stretches = copied_stretches(run, beside, close, open_ends)
     if not stretches or not _in_veins(draft, run, beside, stretches):
-        return stretches, []
+        return stretches, [], stretches
     exact = Limits(settings.tolerance, settings.copies_overlap, settings.copies_radius_ratio)
     same = copied_stretches(run, beside, exact, open_ends) if settings.tolerance > 0 else []
     covered = np.zeros(len(run.edge), np.bool_)
@@ -213,8 +236,7 @@ def _decided(
         if not covered[(stretch.first + stretch.last) // 2]
         and run.along[stretch.last] - run.along[stretch.first] >= settings.copies_overlap
     ]
-    _leave_alone(state, run, beside, aside)
-    return same, [_veins_finding(run, stretch) for stretch in aside]
+    return same, aside, stretches
 
 
 def _leave_alone(state: Fusing, run: Samples, beside: Beside, stretches: list[Stretch]) -> None:

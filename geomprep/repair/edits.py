@@ -124,22 +124,27 @@ def with_edges(graph: PointGraph, edges: IntArray, own: tuple[IntArray, IntArray
     )
 
 
-def with_doubled_point(graph: PointGraph, point: int, edges: IntArray) -> PointGraph:
+def with_doubled_point(graph: PointGraph, point: int, edges: IntArray, radius: FloatArray) -> PointGraph:
     """Give some of the edges at a point a point of their own at the same place.
 
-    Raw points stay with the old one.
+    Parameters
+    ----------
+    graph : PointGraph
+    point : int
+        Raw points stay with this one.
+    edges : (k,) int array
+        Edges that get the new point.
+    radius : (2,) float array
+        Interpolated radius of the old and of the new point.
     """
     new = graph.n_points
-    doubled = replace(
-        graph,
-        **{
-            name: np.concatenate((getattr(graph, name), getattr(graph, name)[point : point + 1]))
-            for name in _POINT_FIELDS
-        },
-    )
+    fields = {name: getattr(graph, name) for name in _POINT_FIELDS}
+    fields = {name: np.concatenate((values, values[point : point + 1])) for name, values in fields.items()}
+    fields["radius"][[point, new]] = radius
+    fields["radius_basis"][[point, new]] = Basis.INTERPOLATED
     moved = graph.edges.copy()
     moved[edges] = np.where(moved[edges] == point, new, moved[edges])
-    return replace(doubled, edges=moved)
+    return replace(graph, **fields, edges=moved)
 
 
 def with_merged_points(graph: PointGraph, group: IntArray) -> PointGraph:

@@ -14,7 +14,7 @@ from geomprep.repair.classes import class_findings
 from geomprep.repair.coincident import join_near_ends
 from geomprep.repair.copies import fuse_copies
 from geomprep.repair.doubled import single_edges
-from geomprep.repair.draft import Draft, compacted, lengths, merged
+from geomprep.repair.draft import LEFT_ALONE, Draft, compacted, lengths, merged
 from geomprep.repair.ends import join_near_open_ends
 from geomprep.repair.joints import join_sides
 from geomprep.repair.overlaps import Layout
@@ -183,7 +183,7 @@ def _finished(draft: Draft) -> tuple[PointGraph, tuple[Finding, ...]]:
         radius_basis=radii.basis,
         vessel_class=draft.vessel_class,
         input_id=draft.input_id,
-        protected=np.zeros(len(draft.points), np.bool_),
+        protected=draft.end_state == LEFT_ALONE,
         source_point=draft.source_point,
         edges=draft.edges,
         edge_basis=np.full(len(draft.edges), Basis.MEASURED, np.uint8),

@@ -20,7 +20,7 @@ class JoinSettings:
     copies_within : float
         Lines that run within this part of the radius of a common middle line (and so
         within twice as much of one another) are copies of one vessel. Veins are
-        fused within `tolerance` only.
+        fused within `tolerance` only; beyond it a person is asked.
     copies_overlap : float
         Radii that two lines must share before they count as copies rather than as crossing.
     copies_radius_ratio : float

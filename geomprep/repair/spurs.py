@@ -5,13 +5,13 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.spatial import KDTree
 
 from geomprep.errors import InputError
 from geomprep.model import BoolArray, FloatArray, IntArray, PointGraph, Repair, anchor_ids
 from geomprep.repair.branches import Branches
 from geomprep.repair.edits import without_edges
 from geomprep.repair.steps import Given, StepResult
+from geomprep.repair.tubes import near_tubes
 
 __all__ = ["SpurSettings", "drop_spurs"]
 
@@ -181,23 +181,8 @@ def _excess(branches: Branches, chosen: IntArray, places: tuple[IntArray, IntArr
     excess = np.full(len(places[0]), np.inf)
     for rows, count in ((row[~among[branches.chain[row]]], 6), (row[among[branches.chain[row]]], 24)):
         if len(rows):
-            excess = np.minimum(excess, _outside_tubes(branches, rows, (places[0], chosen[places[1]]), count))
-    return excess
-
-
-def _outside_tubes(branches: Branches, rows: IntArray, places: tuple[IntArray, IntArray], count: int) -> FloatArray:
-    """The same for the tubes of some rows' edges, those of a point's own chain left out."""
-    graph, (point, own) = branches.graph, places
-    a, b = branches.cut.point[rows], branches.cut.point[rows + 1]
-    tree = KDTree(0.5 * (graph.points[a] + graph.points[b]))
-    near = tree.query(graph.points[point], k=min(count, len(rows)))[1].reshape(len(point), -1)
-    start, way = graph.points[a[near]], graph.points[b[near]] - graph.points[a[near]]
-    to = graph.points[point][:, None] - start
-    part = np.clip((to * way).sum(axis=2) / np.maximum((way * way).sum(axis=2), 1e-300), 0.0, 1.0)
-    apart = np.linalg.norm(to - part[..., None] * way, axis=2)
-    outside = apart - (graph.radius[a[near]] * (1 - part) + graph.radius[b[near]] * part)
-    outside[branches.chain[rows[near]] == own[:, None]] = np.inf
-    excess: FloatArray = outside.min(axis=1)
+            near = near_tubes(branches, rows, places[0], chosen[places[1]], count)
+            excess = np.minimum(excess, (near.distance - near.radius).min(axis=1))
     return excess
 
 

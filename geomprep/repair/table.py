@@ -8,9 +8,16 @@ from typing import Any, Final
 
 from geomprep.model import PointGraph, Repair
 from geomprep.repair.cliques import CliqueSettings, collapse_cliques
+from geomprep.repair.floor import FloorSettings, report_floor
+from geomprep.repair.gaps import GapSettings, close_gaps
 from geomprep.repair.holes import HoleSettings, fill_holes
+from geomprep.repair.inside import CopySettings, drop_copies
+from geomprep.repair.kissing import KissingSettings, part_kissing
+from geomprep.repair.loops import LoopSettings, name_loops
+from geomprep.repair.paths import PathSettings, smooth_paths
 from geomprep.repair.spurs import SpurSettings, drop_spurs
 from geomprep.repair.steps import Given, Step, StepResult, run_steps
+from geomprep.repair.stray import StraySettings, drop_stray
 
 __all__ = ["STEPS", "StepRow", "mend_graph"]
 
@@ -27,8 +34,15 @@ class StepRow:
 
 STEPS: Final[tuple[StepRow, ...]] = (
     StepRow("cliques", CliqueSettings, collapse_cliques, "collapse knots of short edges at junctions"),
+    StepRow("kissing", KissingSettings, part_kissing, "part vessels that only touch"),
     StepRow("holes", HoleSettings, fill_holes, "fill holes between two arms of one vessel"),
     StepRow("spurs", SpurSettings, drop_spurs, "drop branches that end in the tube of their parent"),
+    StepRow("copies", CopySettings, drop_copies, "drop lines that run inside another vessel"),
+    StepRow("gaps", GapSettings, close_gaps, "bridge gaps from end to end and from end to side"),
+    StepRow("stray", StraySettings, drop_stray, "drop short parts that hang together with nothing"),
+    StepRow("paths", PathSettings, smooth_paths, "smooth jagged paths by the noise declared"),
+    StepRow("loops", LoopSettings, name_loops, "name the loops that are kept"),
+    StepRow("floor", FloorSettings, report_floor, "report radii at the floor of partial volume"),
 )
 """In this order: what a step leaves is what the next one sees."""
 

@@ -11,7 +11,7 @@ import numpy as np
 import pytest
 
 from geomprep.model import Centrelines, PointGraph, degrees
-from geomprep.repair import JoinSettings, join
+from geomprep.repair import JoinSettings, Verdict, Verdicts, join
 
 Lines = Callable[..., Centrelines]
 Graphs = Callable[[PointGraph], nx.MultiGraph]
@@ -110,7 +110,7 @@ def test_repair_states_conductance_of_both_and_of_one(lines: Lines) -> None:
     assert repair.kind == "fused copies"
     assert repair.conductance_before == pytest.approx(2 * 1.9634954e-11, rel=1e-6)
     assert repair.conductance_after == pytest.approx(1.9634954e-11, rel=1e-6)
-    assert (repair.choice, repair.options, repair.verdict_by) == ("fuse", ("fuse", "leave"), "rule")
+    assert (repair.choice, repair.options, repair.verdict_by) == ("fuse", ("leave", "fuse"), "rule")
     assert "20 radii" in repair.reason
     # the kept line moves half way between both
     inner = result.graph.points[degrees(result.graph.n_points, result.graph.edges) == 2]
@@ -155,8 +155,12 @@ def test_veins_are_fused_only_within_the_tolerance(lines: Lines) -> None:
     assert [repair.kind for repair in exact.repairs] == ["fused copies"]
     assert junction_degrees(exact.graph) == {1: 2}
     beside = join(lines([one, other + np.array([0.04, 0, 0])], 1.0, classes=[2, 2]))
-    assert beside.repairs == ()
+    (question,) = beside.repairs
+    assert (question.kind, question.choice, question.verdict_by) == ("overlapping veins", "leave", "open")
     assert junction_degrees(beside.graph) == {1: 4}
+    decided = Verdicts({question.id: Verdict("fuse", "person")})
+    fused = join(lines([one, other + np.array([0.04, 0, 0])], 1.0, classes=[2, 2]), verdicts=decided)
+    assert junction_degrees(fused.graph) == {1: 2}
     assert [finding.kind for finding in beside.findings] == ["overlapping veins", "isolated part"]
 
 
@@ -212,7 +216,7 @@ def test_doubled_vein_left_to_a_person_is_not_joined_at_its_ends(lines: Lines) -
     copy = np.linspace(10.2, 30.2, 34)[:, None] * [0, 0, 1.0] + np.array([0.06, 0, 0])
     result = join(lines([one, copy], 1.0, classes=[2, 2]))
     assert junction_degrees(result.graph) == {1: 4}
-    assert result.repairs == ()
+    assert [(repair.kind, repair.verdict_by) for repair in result.repairs] == [("overlapping veins", "open")]
     assert [finding.kind for finding in result.findings] == ["overlapping veins", "isolated part"]
     arteries = join(lines([one, copy], 1.0))
     assert junction_degrees(arteries.graph) == {1: 2}
