@@ -370,8 +370,8 @@ def _extreme(here: _Segment, depth: FloatArray, stretch: tuple[int, int, int], s
         height = float(level + slope * shift / size + bend * (shift / size) ** 2)
         place += shift
         rest = d[core] - np.polyval((bend, slope, level), x / size)
-    agrees = abs(height - raw[1]) <= 3 * here.noise and np.sqrt(np.mean(rest**2)) <= 2 * here.noise
-    return (place, height) if agrees else raw
+    misfit = np.sqrt(np.sum(rest**2) / (len(rest) - 3))
+    return (place, height) if abs(height - raw[1]) <= 3 * here.noise and misfit <= 1.5 * here.noise else raw
 
 
 def _table(found: list[dict[str, float]], arterial: BoolArray, settings: NarrowingSettings) -> Narrowings:
