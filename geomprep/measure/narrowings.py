@@ -20,7 +20,7 @@ from geomprep.model import BoolArray, FloatArray, IntArray
 __all__ = ["NarrowingSettings", "Narrowings", "narrowings"]
 
 _SAMPLES = 65  # places at which the line through a whole segment looks at it
-_PASSES = 3  # of extent and reference in turn
+_PASSES = 2  # of reference and extent in turn; a third changes nothing
 _COLUMNS = ("start", "end", "place", "radius", "reference_radius", "scatter")
 _MARGIN = 0.25  # of the length of the lesion: its faint feet, kept out of the reference
 
@@ -371,7 +371,7 @@ def _extreme(here: _Segment, depth: FloatArray, stretch: tuple[int, int, int], s
         place += shift
         rest = d[core] - np.polyval((bend, slope, level), x / size)
     misfit = np.sqrt(np.sum(rest**2) / (len(rest) - 3))
-    return (place, height) if abs(height - raw[1]) <= 3 * here.noise and misfit <= 1.5 * here.noise else raw
+    return (place, height) if misfit <= 1.5 * here.noise else raw
 
 
 def _table(found: list[dict[str, float]], arterial: BoolArray, settings: NarrowingSettings) -> Narrowings:

@@ -87,6 +87,18 @@ def test_sine(periods: int, inflections: int, metric: float, n_per_period: int) 
     assert line.sum_of_angles_metric[0] == pytest.approx(1 / 7.640396 * np.pi, rel=1e-4)
 
 
+def test_an_inflection_between_points_is_no_torsion() -> None:
+    """40 points on one period of sin x, none on the inflection: planar, so all angles are turns of the line."""
+    x = np.linspace(0, 2 * np.pi, 40)
+    points = np.stack((x, np.sin(x), 0 * x), axis=1)
+    line, local = tortuosity(points, whole(points)), curvature(points, whole(points))
+    assert line.inflections[0] == 1
+    np.testing.assert_allclose(local.torsion, 0, atol=1e-12)
+    length = np.linalg.norm(np.diff(points, axis=0), axis=1).sum()
+    # the last turn, at 2π − h, is left out: y'' ≈ h over 1 + y'² = 2, times the step h = 0.161: h²/2 = 0.0130 rad
+    assert line.sum_of_angles_metric[0] * length == pytest.approx(line.total_curvature[0] - 0.0130, abs=2e-4)
+
+
 def test_straight_and_short_lines() -> None:
     straight = np.stack((np.linspace(0, 1, 11), np.zeros(11), np.zeros(11)), axis=1)
     points = np.vstack((straight, [[0, 0, 0], [0, 0, 1]], [[0, 0, 0], [1, 0, 0], [1, 1, 0]]))

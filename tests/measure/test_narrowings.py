@@ -132,6 +132,41 @@ def test_clean_tapers_and_noise_alone_give_none(noise: float, taper: float, form
     assert found.against_distal.shape == found.focal.shape == (0,)
 
 
+def test_half_a_lesion_beside_a_widening_end() -> None:
+    """A drawn sinus: 3.6 mm, a throat of 1.5 mm at 25.73 mm, 3.2 mm at its end, stations 1.35 mm apart.
+
+    The line between both shoulders is 3.2 to 3.3 mm at the throat: 1 − 1.5/3.2 = 0.53, 1 − 1.5/3.3 = 0.55.
+    """
+    radius = [3.6, 3.59, 3.58, 3.55, 3.52, 3.48, 3.43, 3.36, 3.24, 3.05, 2.83, 2.61, 2.40]
+    radius += [2.16, 1.91, 1.71, 1.6, 1.55, 1.52, 1.5, 1.58, 1.89, 2.28, 2.62, 2.96, 3.2]
+    s = np.arange(26) * 1.3544e-3
+    found = found_in(np.array(radius) * 1e-3, s)
+    assert found.widening.tolist() == [False]
+    assert found.place[0] == pytest.approx(25.73e-3, abs=1e-5)
+    assert 0.52 < found.degree_by_diameter[0] < 0.55
+    assert (found.sides[0], found.focal[0]) == (2, True)
+
+
+def test_scatter_decides_what_can_be_told() -> None:
+    """10 % noise: none at five times the scatter; at twice, noise of 2.3 % of 9660 stations a side is listed."""
+    rng = np.random.default_rng(8)
+    radius = (2e-3 * np.exp(0.1 * rng.standard_normal((60, 161)))).ravel()
+    lines = (np.tile(S, 60), radius, np.arange(61) * 161)
+    assert len(narrowings(*lines).segment) <= 1
+    assert len(narrowings(*lines, settings=NarrowingSettings(scatter_multiple=2.0)).segment) > 20
+
+
+def test_one_side_takes_the_level_beside_the_lesion() -> None:
+    """Half of the lumen is lost at the end of a vessel that widens from 2.0 to 2.3 mm over its last half."""
+    vessel = np.interp(S, [0, 50e-3, 58e-3, 80e-3], [2.0e-3, 2.0e-3, 2.3e-3, 2.3e-3])
+    found = found_in(vessel * bump(0.5, 80e-3, 10e-3))
+    assert found.sides.tolist() == [1]
+    assert not found.focal[0]  # short, yet at the end
+    assert found.length[0] < 10 * found.reference_radius[0]
+    # the reference window begins at most 10 radii before the lesion: between the mean there and the end value
+    assert 2.1e-3 < found.reference_radius[0] < 2.35e-3
+
+
 def test_widening() -> None:
     """Radius doubled at 30 mm: gain 1 by diameter, 3 by area."""
     found = found_in(2e-3 * bump(-1.0, 30e-3, 6e-3), arterial=np.array([True]))

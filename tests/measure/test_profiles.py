@@ -106,6 +106,32 @@ def test_scatter_that_is_found_gives_the_bias() -> None:
     assert found.noise_bias[0] == noise_bias(found.scatter[0])
 
 
+def test_three_change_points_are_found_exactly() -> None:
+    """A narrowing drawn with straight flanks in ln r at stations: each knot only shows once the others are there."""
+    s = np.linspace(0, 60e-3, 61)
+    at, log = [0, 15e-3, 20e-3, 28e-3, 60e-3], [0, 0.1, -0.6, 0.05, -0.1]
+    found = radius_profiles(s, 2e-3 * np.exp(np.interp(s, at, log)), np.array([0, 61]))
+    assert found.knot_distance == pytest.approx(at, abs=1e-12)
+    assert np.log(found.knot_radius / 2e-3) == pytest.approx(log, abs=1e-9)
+    assert found.scatter[0] == pytest.approx(0, abs=1e-9)
+
+
+def test_ripples_below_the_finest_scatter_make_no_pieces() -> None:
+    r = 2e-3 * (1 + 5e-4 * np.sin(S / 40e-3 * 6))
+    assert radius_profiles(S, r, ONE).kind[0] == ProfileKind.CONSTANT
+    assert radius_profiles(S, r, ONE, ProfileSettings(finest_scatter=1e-6)).kind[0] == ProfileKind.PIECEWISE
+
+
+def test_scatter_of_short_segments_counts_the_fitted_values_off() -> None:
+    """20 stations: mean square within 3 % of the truth, where 5 % would be lost with one value fitted."""
+    n = 4000
+    noisy = np.exp(0.05 * np.random.default_rng(1).standard_normal(n * 20))
+    plain = ProfileSettings(most_change_points=0, correlation_length=0)
+    found = radius_profiles(np.tile(np.arange(20.0), n), noisy, np.arange(n + 1) * 20, plain)
+    # the choice of the better of two forms takes up to 2 %; standard error √(2/(20 n)) = 0.5 %
+    assert np.mean(found.scatter**2) / 0.05**2 == pytest.approx(1, abs=0.03)
+
+
 def test_noise_alone_seldom_makes_a_change_point() -> None:
     rng = np.random.default_rng(11)
     n = 200
