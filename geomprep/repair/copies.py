@@ -11,8 +11,8 @@ from geomprep.findings import Finding, Severity
 from geomprep.model import FloatArray, IntArray, Repair, anchor_ids, raw_order
 from geomprep.repair.classes import VEIN, may_join
 from geomprep.repair.draft import LEFT_ALONE, Draft
-from geomprep.repair.fused import Absorbed, Fusing, averaged, fused_draft, line_anchors
-from geomprep.repair.overlaps import Layout, overlapping_runs
+from geomprep.repair.fused import Absorbed, Fusing, fused_draft, line_anchors, move_to_mean
+from geomprep.repair.overlaps import Held, overlapping_runs
 from geomprep.repair.runs import Runs, between, nearest_part, places_on
 from geomprep.repair.settings import JoinSettings
 from geomprep.repair.stretches import Beside, Forest, Limits, Samples, Stretch, copied_stretches
@@ -35,8 +35,8 @@ _WEAK = 3.0
 
 
 def fuse_copies(
-    draft: Draft, layout: Layout, settings: JoinSettings, verdicts: Verdicts
-) -> tuple[Draft, tuple[Repair, ...], tuple[Finding, ...]]:
+    held: Held, settings: JoinSettings, verdicts: Verdicts
+) -> tuple[tuple[Repair, ...], tuple[Finding, ...]]:
     """Fuse runs that are copies of one vessel.
 
     The longest of the runs that lie along one another is kept; a stretch of a
@@ -46,17 +46,14 @@ def fuse_copies(
 
     Parameters
     ----------
-    draft : Draft
-        Edges laid in runs.
-    layout : Layout
+    held : Held
+        Its draft has the edges laid in runs; it keeps the layout where nothing was fused.
     settings : JoinSettings
     verdicts : Verdicts
         Recorded choices; one on a line holds for all its stretches.
 
     Returns
     -------
-    Draft
-        The same object where nothing was fused.
     repairs : tuple of Repair
         One per absorbed stretch, per line that a person left, and per vein that a person is asked about.
     findings : tuple of Finding
@@ -64,21 +61,27 @@ def fuse_copies(
     """
     apart = _PAIR * settings.copies_within
     if apart <= 0:
-        return draft, (), ()
+        return (), ()
+    draft, layout = held.take_laid()
     which = overlapping_runs(draft, layout, _WEAK * apart, settings.copies_radius_ratio)
     if len(which) == 0:
-        return draft, (), ()
+        held.put(draft, layout)
+        return (), ()
     samples, rows = _sampled(draft, layout.runs, which)
     order = _longest_first(draft, layout.runs, which)
     state, left, findings = _absorbed_in_turn(draft, (samples, rows), order, (settings, verdicts))
     draft = state.draft = _ends_left_alone(draft, state)
     findings = _few(findings)
     if not state.absorbed:
-        return draft, left, findings
-    points, end_radius = averaged(state, 1.5 * apart)
-    new = fused_draft(state, points, end_radius)
-    records = settled(_records(state, points, end_radius), verdicts)
-    return new, (*records, *left), (*findings, _summary(state))
+        held.put(draft, layout)
+        return left, findings
+    del draft, layout
+    before = [_both(state, taken) for taken in state.absorbed]
+    move_to_mean(state, 1.5 * apart)
+    records = settled(_records(state, before), verdicts)
+    summary = _summary(state)
+    held.put(fused_draft(state))
+    return (*records, *left), (*findings, summary)
 
 
 def _sampled(draft: Draft, laid: Runs, which: IntArray) -> tuple[Samples, IntArray]:
@@ -287,8 +290,8 @@ def _veins_finding(run: Samples, stretch: Stretch) -> Finding:
     )
 
 
-def _records(state: Fusing, points: FloatArray, end_radius: FloatArray) -> tuple[Repair, ...]:
-    """One repair per absorbed stretch, in the order of raw coordinates.
+def _records(state: Fusing, before: list[float]) -> tuple[Repair, ...]:
+    """One repair per absorbed stretch, in the order of raw coordinates; `before` is the conductance of both copies.
 
     Ids hang on the ends and the middle of the whole line, which no limit moves.
     """
@@ -304,22 +307,24 @@ def _records(state: Fusing, points: FloatArray, end_radius: FloatArray) -> tuple
     of_raw = of_node[merged_into[raw]]
     raw = raw[np.argsort(of_raw, kind="stable")]
     bounds = np.cumsum(np.bincount(of_raw, minlength=len(order)))[:-1]
-    absorbed = [state.absorbed[row] for row in order.tolist()]
-    lines = draft.source_point[np.stack([taken.line for taken in absorbed])]
+    lines = draft.source_point[np.stack([state.absorbed[row].line for row in order.tolist()])]
     ids = anchor_ids("fused-copies", draft.raw_points, lines)
     return tuple(
-        _record(state, taken, str(name), tuple(group.tolist()), (points, end_radius))
-        for taken, name, group in zip(absorbed, ids, np.split(raw, bounds), strict=True)
+        _record(state, state.absorbed[row], str(name), tuple(group.tolist()), before[row])
+        for row, name, group in zip(order.tolist(), ids, np.split(raw, bounds), strict=True)
     )
 
 
-def _record(
-    state: Fusing, taken: Absorbed, name: str, raw: tuple[int, ...], after: tuple[FloatArray, FloatArray]
-) -> Repair:
-    """Repair of one absorbed stretch, with the conductance of both copies before and of the one after."""
+def _both(state: Fusing, taken: Absorbed) -> float:
+    """Conductance of a stretch and of what it lies beside."""
     own = _resistance(taken.samples.point, taken.samples.radius)
-    beside = _resistance(*_on_edges(state.edges, state.points, state.end_radius, taken))
-    fused = _resistance(*_on_edges(state.edges, *after, taken))
+    beside = _resistance(*_on_edges(state, taken))
+    return float(np.pi / 8.0 * (1.0 / own + 1.0 / beside))
+
+
+def _record(state: Fusing, taken: Absorbed, name: str, raw: tuple[int, ...], before: float) -> Repair:
+    """Repair of one absorbed stretch, with the conductance of both copies before and of the one after."""
+    fused = _resistance(*_on_edges(state, taken))
     length = float(np.linalg.norm(np.diff(taken.samples.point, axis=0), axis=1).sum())
     x, y, z = taken.samples.point[len(taken.samples.edge) // 2].tolist()
     return Repair(
@@ -334,18 +339,16 @@ def _record(
         position=(x, y, z),
         choice="fuse",
         options=_OPTIONS,
-        conductance_before=np.pi / 8.0 * (1.0 / own + 1.0 / beside),
+        conductance_before=before,
         conductance_after=np.pi / 8.0 / fused,
         raw_points=raw,
     )
 
 
-def _on_edges(
-    edges: IntArray, points: FloatArray, end_radius: FloatArray, taken: Absorbed
-) -> tuple[FloatArray, FloatArray]:
+def _on_edges(state: Fusing, taken: Absorbed) -> tuple[FloatArray, FloatArray]:
     """Positions and radii on the kept edges beside the samples of a stretch."""
-    start, end = points[edges[taken.edge, 0]], points[edges[taken.edge, 1]]
-    return start + taken.part[:, None] * (end - start), between(end_radius, taken.edge, taken.part)
+    start, end = (state.points[state.edges[taken.edge, side]] for side in (0, 1))
+    return start + taken.part[:, None] * (end - start), between(state.end_radius, taken.edge, taken.part)
 
 
 def _resistance(points: FloatArray, radius: FloatArray) -> float:

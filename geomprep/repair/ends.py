@@ -11,6 +11,7 @@ from geomprep.model import BoolArray, FloatArray, IntArray, Repair, anchor_ids, 
 from geomprep.repair.classes import may_join
 from geomprep.repair.coincident import group_pairs, near_pairs
 from geomprep.repair.draft import JOINED_ENDS, LEFT_ALONE, Draft, degree, merged, point_radius
+from geomprep.repair.overlaps import Held
 from geomprep.repair.runs import Runs
 from geomprep.repair.verdicts import Verdicts, settled
 
@@ -20,15 +21,13 @@ _INSIDE = 2.0
 """A run shorter than this many radii is not closed to a ring."""
 
 
-def join_near_open_ends(
-    draft: Draft, laid: Runs, within: float, verdicts: Verdicts
-) -> tuple[Draft, tuple[Repair, ...]]:
+def join_near_open_ends(held: Held, within: float, verdicts: Verdicts) -> tuple[Repair, ...]:
     """Merge open ends with ends and junctions that lie within a part of the radius.
 
     Parameters
     ----------
-    draft : Draft
-    laid : Runs
+    held : Held
+        Its draft has the edges laid in runs; it keeps the layout where nothing was joined.
     within : float
         Largest distance as a part of the smaller radius.
     verdicts : Verdicts
@@ -36,11 +35,11 @@ def join_near_open_ends(
 
     Returns
     -------
-    Draft
-        The same object where nothing was near.
-    repairs : tuple of Repair
+    tuple of Repair
         One per group of points that became one, or that a person left apart.
     """
+    draft, layout = held.take_laid()
+    laid = layout.runs
     ends = degree(draft)
     node = np.flatnonzero((ends != 2) & (ends > 0) & (draft.end_state != LEFT_ALONE))
     radius = point_radius(draft)
@@ -49,7 +48,8 @@ def join_near_open_ends(
     allowed = may_join(draft.vessel_class[one], draft.vessel_class[other])
     allowed &= ((ends[one] == 1) | (ends[other] == 1)) & ~_short_run_between(draft, laid, one, other)
     if not allowed.any():
-        return draft, ()
+        held.put(draft, layout)
+        return ()
     group, _ = group_pairs(draft.points[node], radius[node], pairs[allowed], within)
     leader = np.full(int(group.max()) + 1, len(draft.points))
     np.minimum.at(leader, group, node)
@@ -70,13 +70,16 @@ def join_near_open_ends(
         end_state[left] = LEFT_ALONE
         draft = replace(draft, end_state=end_state)
     if len(joined) == 0:
-        return draft, repairs
+        held.put(draft, layout)
+        return repairs
+    del layout, laid
     junctions = np.bincount(label[ends > 2], minlength=len(label))
     keeps = (ends > 2) | (junctions[label] == 0)  # a junction stays in its place
     _, label = np.unique(label, return_inverse=True)
     end_state = draft.end_state.copy()
     end_state[joined] = JOINED_ENDS
-    return merged(replace(draft, end_state=end_state), label, keeps), repairs
+    held.put(merged(replace(draft, end_state=end_state), label, keeps))
+    return repairs
 
 
 def _short_run_between(draft: Draft, laid: Runs, one: IntArray, other: IntArray) -> BoolArray:

@@ -5,15 +5,16 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 
 import numpy as np
+import numpy.typing as npt
 from scipy.spatial import KDTree
 
 from geomprep.model import FloatArray, IntArray
-from geomprep.repair.draft import Draft, degree, merged
+from geomprep.repair.draft import Draft, degree, merged, with_edge_rows
 from geomprep.repair.insert import with_new_points, with_split_edges
 from geomprep.repair.runs import between, foot
 from geomprep.repair.stretches import Beside, Samples, Stretch
 
-__all__ = ["Absorbed", "Fusing", "averaged", "fused_draft", "line_anchors"]
+__all__ = ["Absorbed", "Fusing", "fused_draft", "line_anchors", "move_to_mean"]
 
 _SAME_JUNCTION = 1.0
 """Radii within which two places where copies part are one junction."""
@@ -190,26 +191,24 @@ def _edge_before(run: Samples, row: int) -> int:
     return int(run.edge[row]) - (1 if run.part[row] == 0.0 else 0)
 
 
-def fused_draft(state: Fusing, points: FloatArray, end_radius: FloatArray) -> Draft:
-    """Make the draft that is left once all runs are absorbed.
-
-    Parameters
-    ----------
-    state : Fusing
-    points, end_radius : arrays
-        As :func:`averaged` gives them.
-    """
+def fused_draft(state: Fusing) -> Draft:
+    """Make the draft that is left once all runs are absorbed; the state is spent then."""
     draft, n = state.draft, len(state.draft.points)
     new_edge = np.array(state.new_edge, np.int64)
-    kept = ~state.gone
-    number = np.cumsum(kept) - 1
-    whole = with_new_points(replace(draft, points=points[:n]), points[n:], new_edge)
-    whole = replace(whole, edges=state.edges[kept], end_radius=end_radius[kept], edge_class=draft.edge_class[kept])
-    whole = with_split_edges(whole, number[new_edge], np.array(state.new_part), n + np.arange(len(new_edge)))
+    new_point = n + np.arange(len(new_edge))
     label = _targets(state, n + len(new_edge))
+    kept = np.flatnonzero(~state.gone)
+    points = state.points[: n + len(new_edge)]
+    whole = with_new_points(replace(draft, points=points[:n]), points[n:], new_edge)
+    whole = replace(whole, edges=state.edges, end_radius=state.end_radius, edge_class=draft.edge_class)
+    whole = with_edge_rows(whole, kept)
+    del draft, points
+    # of a million points these are large: what was drawn goes before the copies below are made
+    state.draft, state.points, state.edges, state.end_radius = whole, whole.points, whole.edges, whole.end_radius
+    number = np.searchsorted(kept, new_edge, side="right") - 1
+    whole = with_split_edges(whole, number, np.array(state.new_part), new_point)
     stays = label == np.arange(len(label))
-    _, label = np.unique(label, return_inverse=True)
-    return merged(whole, label, stays)
+    return merged(whole, (np.cumsum(stays) - 1)[label], stays)
 
 
 def _targets(state: Fusing, count: int) -> IntArray:
@@ -236,42 +235,56 @@ def _targets(state: Fusing, count: int) -> IntArray:
     return label
 
 
-def averaged(state: Fusing, reach: float) -> tuple[FloatArray, FloatArray]:
-    """Average kept points with the copies that were absorbed beside them.
+def move_to_mean(state: Fusing, reach: float) -> None:
+    """Move kept points to the mean of themselves and the copies absorbed beside them (in place).
+
+    Radii at the ends of kept edges become the geometric mean; new points move with the edge they lie on.
 
     Parameters
     ----------
     state : Fusing
     reach : float
         Copies further from a kept point than this, in radii, do not move it.
-
-    Returns
-    -------
-    points : (n + new, 3) float array
-        Mean positions; new points move with the edge they lie on.
-    end_radius : (e, 2) float array
-        Geometric mean radii at the ends of kept edges.
     """
+    n, count = len(state.draft.points), len(state.new_edge)
+    moved, shift, log_radius, copies = _copies_beside(state, reach)
+    ends = state.edges[np.array(state.new_edge, np.int64)]
+    part = np.array(state.new_part)[:, None]
+    first, last = (np.where(known[:, None], shift[row], 0.0) for row, known in (_row(moved, end) for end in ends.T))
+    state.points[: n + count] += 0.0  # no negative zeros
+    state.points[moved] += shift[:-1]
+    state.points[n : n + count] += (1.0 - part) * first + part * last
+    touched = np.zeros(len(state.points), np.bool_)
+    touched[moved] = True
+    place = np.flatnonzero(touched[state.edges])
+    row, _ = _row(moved, state.edges.ravel()[place])
+    radius = state.end_radius.ravel()
+    radius[place] = np.exp((np.log(radius[place]) + log_radius[row]) / (1.0 + copies[row]))
+
+
+def _row(moved: IntArray, point: IntArray) -> tuple[IntArray, npt.NDArray[np.bool_]]:
+    """Row of points among those moved, and whether they are there; the row behind the last where all are smaller."""
+    row = np.searchsorted(moved, point)
+    return row, np.append(moved, -1)[row] == point
+
+
+def _copies_beside(state: Fusing, reach: float) -> tuple[IntArray, FloatArray, FloatArray, FloatArray]:
+    """Kept points with copies beside them: shift to the mean (and a row of zeros), sum of ln r and number of copies."""
     draft, n = state.draft, len(state.draft.points)
-    total, log_radius, count = np.zeros((n, 3)), np.zeros(n), np.zeros(n)
+    found = []
     for taken in state.absorbed:
         nodes = np.unique(state.edges[taken.edge])
         nodes = nodes[nodes < n]
         nodes = nodes[state.on_kept[nodes]]
         nodes, place, radius = _beside_points(draft, taken.samples, nodes, reach)
-        total[nodes] += place - draft.points[nodes]
-        log_radius[nodes] += np.log(radius)
-        count[nodes] += 1.0
-    points = state.points[: n + len(state.new_edge)].copy()
-    shift = np.zeros_like(points)
-    shift[:n] = total / (1.0 + count)[:, None]
-    part = np.array(state.new_part)[:, None]
-    ends = state.edges[np.array(state.new_edge, np.int64)]
-    shift[n:] = (1.0 - part) * shift[ends[:, 0]] + part * shift[ends[:, 1]]
-    of_end = np.where(state.edges < n, state.edges, 0)
-    joins = (count[of_end] > 0) & (state.edges < n)
-    mean = np.exp((np.log(state.end_radius) + log_radius[of_end]) / (1.0 + count[of_end]))
-    return points + shift, np.where(joins, mean, state.end_radius)
+        found.append((nodes, place - draft.points[nodes], np.log(radius)))
+    node, away, log_radius = (np.concatenate(column) for column in zip(*found, strict=True))
+    moved, row = np.unique(node, return_inverse=True)
+    total = np.zeros((len(moved) + 1, 3))
+    np.add.at(total, row, away)
+    copies = np.bincount(row, minlength=len(moved) + 1).astype(np.float64)
+    sums: FloatArray = np.bincount(row, log_radius, len(moved) + 1).astype(np.float64)
+    return moved, total / (1.0 + copies)[:, None], sums, copies
 
 
 def _beside_points(

@@ -17,7 +17,7 @@ from geomprep.repair.doubled import single_edges
 from geomprep.repair.draft import LEFT_ALONE, Draft, compacted, lengths, merged
 from geomprep.repair.ends import join_near_open_ends
 from geomprep.repair.joints import join_sides
-from geomprep.repair.overlaps import Layout
+from geomprep.repair.overlaps import Held
 from geomprep.repair.parts import components, isolated_parts
 from geomprep.repair.radii import settled_radii
 from geomprep.repair.runs import laid_in_runs
@@ -86,17 +86,23 @@ def join(
     """
     settings = settings or JoinSettings()
     refuse_unusable(centrelines)
-    draft, findings = started(centrelines)
-    draft, found = _coincident(draft, settings)
+    held, repairs, findings = _drawn(centrelines, settings)
+    repairs, found = _nearby(held, repairs, settings, verdicts or Verdicts())
     findings += found
-    draft, repairs = _compacted(laid_in_runs(draft), ())
-    draft, repairs, found = _nearby(draft, repairs, settings, verdicts or Verdicts())
-    findings += found
+    draft = held.take()
     graph, radius_findings = _finished(draft)
     findings += radius_findings
     findings += class_findings(centrelines.vessel_class, draft.edge_class, draft.edges, draft.points)
     findings += isolated_parts(draft, graph.radius)
     return JoinResult(graph, repairs, findings)
+
+
+def _drawn(centrelines: Centrelines, settings: JoinSettings) -> tuple[Held, tuple[Repair, ...], tuple[Finding, ...]]:
+    """The graph as drawn, points at one place taken as one."""
+    draft, findings = started(centrelines)
+    draft, found = _coincident(draft, settings)
+    draft, repairs = _compacted(laid_in_runs(draft), ())
+    return Held(draft), repairs, findings + found
 
 
 def _coincident(draft: Draft, settings: JoinSettings) -> tuple[Draft, tuple[Finding, ...]]:
@@ -111,35 +117,30 @@ def _coincident(draft: Draft, settings: JoinSettings) -> tuple[Draft, tuple[Find
 
 
 def _nearby(
-    draft: Draft, repairs: tuple[Repair, ...], settings: JoinSettings, verdicts: Verdicts
-) -> tuple[Draft, tuple[Repair, ...], tuple[Finding, ...]]:
+    held: Held, repairs: tuple[Repair, ...], settings: JoinSettings, verdicts: Verdicts
+) -> tuple[tuple[Repair, ...], tuple[Finding, ...]]:
     """Fuse copies of trunks, then join open ends to ends and to sides within a part of the radius."""
-    layout = Layout.of(draft)
-    fused, more, findings = fuse_copies(draft, layout, settings, verdicts)
-    repairs += more
-    if fused is not draft:
-        draft, repairs = _settled(fused, repairs, settings)
-        layout = Layout.of(draft)
-    joined, more = join_near_open_ends(draft, layout.runs, settings.joints_within, verdicts)
-    repairs += more
-    if joined is not draft:
-        draft, repairs = _settled(joined, repairs, settings)
-        layout = Layout.of(draft)
-    joined, more = join_sides(draft, layout, settings, verdicts)
-    repairs += more
-    if joined is not draft:
-        draft, repairs = _settled(joined, repairs, settings)
-    return draft, repairs, findings
+    more, findings = fuse_copies(held, settings, verdicts)
+    repairs = _settled(held, repairs + more, settings)
+    more = join_near_open_ends(held, settings.joints_within, verdicts)
+    repairs = _settled(held, repairs + more, settings)
+    more = join_sides(held, settings, verdicts)
+    return _settled(held, repairs + more, settings), findings
 
 
-def _settled(draft: Draft, repairs: tuple[Repair, ...], settings: JoinSettings) -> tuple[Draft, tuple[Repair, ...]]:
-    """Single edges, laid in runs, and no points without edges, after a step has changed the draft."""
+def _settled(held: Held, repairs: tuple[Repair, ...], settings: JoinSettings) -> tuple[Repair, ...]:
+    """Single edges, laid in runs, and no points without edges, where a step has changed the draft."""
+    if held.laid:
+        return repairs
+    draft = held.take()
     short = lengths(draft) == 0.0
     if short.any():  # points that a step has moved to one place
         _, label = components(len(draft.points), draft.edges[short])
         draft = merged(draft, label)
-    single, _ = single_edges(draft, settings.radii_agree_within)
-    return _compacted(laid_in_runs(single), repairs)
+    draft, _ = single_edges(draft, settings.radii_agree_within)
+    draft, repairs = _compacted(laid_in_runs(draft), repairs)
+    held.put(draft)
+    return repairs
 
 
 def _joined_finding(joined: int, tolerance: float) -> Finding:

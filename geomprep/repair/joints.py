@@ -11,7 +11,7 @@ from geomprep.repair.classes import may_join
 from geomprep.repair.draft import JOINED_ENDS, LEFT_ALONE, Draft, degree, merged, without_edges
 from geomprep.repair.ends import run_conductance, runs_at_ends
 from geomprep.repair.insert import with_new_points, with_split_edges
-from geomprep.repair.overlaps import Layout
+from geomprep.repair.overlaps import Held, Layout
 from geomprep.repair.parts import components
 from geomprep.repair.runs import between, nearest_on, places_on
 from geomprep.repair.settings import JoinSettings
@@ -51,9 +51,7 @@ class _Contacts:
         return _Contacts(self.node[which], self.edge[which], self.part[which], self.distance[which])
 
 
-def join_sides(
-    draft: Draft, layout: Layout, settings: JoinSettings, verdicts: Verdicts
-) -> tuple[Draft, tuple[Repair, ...]]:
+def join_sides(held: Held, settings: JoinSettings, verdicts: Verdicts) -> tuple[Repair, ...]:
     """Join line ends to the side of the line that they lie on.
 
     An open end within `joints_within` of the local radius of another line, or a
@@ -63,30 +61,31 @@ def join_sides(
 
     Parameters
     ----------
-    draft : Draft
-        Edges laid in runs.
-    layout : Layout
+    held : Held
+        Its draft has the edges laid in runs; it keeps the layout where nothing was joined.
     settings : JoinSettings
     verdicts : Verdicts
         Recorded choices on the joints.
 
     Returns
     -------
-    Draft
-        The same object where nothing was near.
-    repairs : tuple of Repair
+    tuple of Repair
         One per joint, declined ones too.
     """
+    draft, layout = held.take_laid()
     contacts = _contacts(draft, layout, settings)
     if len(contacts.node) == 0:
-        return draft, ()
+        held.put(draft, layout)
+        return ()
     contacts, facing = _without_facing(draft, layout, contacts)
     contacts = contacts[raw_order(draft.raw_points, np.maximum(draft.source_point[contacts.node], 0))]
     repairs = settled(_records(draft, layout, contacts), verdicts)
     contacts = contacts[np.flatnonzero([repair.choice == "join" for repair in repairs])]
     if len(contacts.node) == 0:
-        return draft, repairs
+        held.put(draft, layout)
+        return repairs
     contacts, inside = _followed_inside(draft, layout, contacts, settings.joints_within)
+    del layout
     gone = np.concatenate((facing.gone, inside.gone))
     target, split = _targets(draft, contacts, settings)
     edge, part = contacts.edge[split], contacts.part[split]
@@ -98,12 +97,16 @@ def join_sides(
     )
     kept = np.ones(len(draft.edges), np.bool_)
     kept[gone] = False
+    del draft
     new = with_split_edges(without_edges(new, ~kept), (np.cumsum(kept) - 1)[edge], part, target[split])
     stays = np.ones(len(new.points), np.bool_)
     stays[np.concatenate((contacts.node, facing.pairs[:, 1], inside.pairs[:, 1]))] = False
     stays[facing.pairs[:, 0]] = True
     _, label = components(len(new.points), pairs)
-    return merged(new, label, stays | ~np.isin(label, label[stays])), repairs
+    has_place = np.zeros(len(label), np.bool_)
+    has_place[label[stays]] = True
+    held.put(merged(new, label, stays | ~has_place[label]))
+    return repairs
 
 
 @dataclass(frozen=True, eq=False)

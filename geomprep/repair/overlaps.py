@@ -13,7 +13,7 @@ from geomprep.repair.classes import may_join
 from geomprep.repair.draft import Draft, degree
 from geomprep.repair.runs import Marks, Runs, marked, nearest_on, places_on, runs
 
-__all__ = ["Layout", "overlapping_runs"]
+__all__ = ["Held", "Layout", "overlapping_runs"]
 
 _COS_APART = np.cos(np.radians(30.0))
 _PROBES, _CROWD, _NEAREST = 500, 30.0, 12
@@ -64,6 +64,35 @@ class Layout:
                 found = wanted.sparse_distance_matrix(tree, reach * size, output_type="ndarray")
                 close = found["v"] <= reach * self.marks.size[which[found["j"]]]
                 yield found["i"][close].astype(np.int64), which[found["j"][close]]
+
+
+class Held:
+    """A draft between two steps of joining, with its layout where that is known.
+
+    A step takes the draft out and puts back the same or the next one: what it no longer needs can go
+    while it still works, so that of a million points no more than two drafts are held.
+    """
+
+    def __init__(self, draft: Draft) -> None:
+        self._held: list[tuple[Draft, Layout | None]] = [(draft, None)]
+
+    @property
+    def laid(self) -> bool:
+        """Whether the layout is known: no step has changed the draft since."""
+        return self._held[0][1] is not None
+
+    def take(self) -> Draft:
+        """Hand over the draft."""
+        return self._held.pop()[0]
+
+    def take_laid(self) -> tuple[Draft, Layout]:
+        """Hand over the draft and its layout."""
+        draft, layout = self._held.pop()
+        return draft, layout or Layout.of(draft)
+
+    def put(self, draft: Draft, layout: Layout | None = None) -> None:
+        """Put back a draft, with its layout where it is the one that was taken."""
+        self._held.append((draft, layout))
 
 
 def _pairs(layout: Layout) -> IntArray:
