@@ -2,7 +2,7 @@
 
 from geomprep.assign.blood import BloodSettings, assign_blood
 from geomprep.assign.end_settings import CalibrationSettings, InletSettings, OutletSettings
-from geomprep.assign.ends import Ends, find_node, resolve_ends
+from geomprep.assign.ends import Ends, coordinates, find_node, resolve_ends
 from geomprep.assign.gravity import Gravity, gravity, heights, with_heights
 from geomprep.assign.imaging import ImagingPressures, ImagingResult, imaging_transmural
 from geomprep.assign.inlets import assign_inlets
@@ -37,6 +37,7 @@ __all__ = [
     "assign_inlets",
     "assign_outlets",
     "assign_walls",
+    "coordinates",
     "find_node",
     "gravity",
     "heights",

@@ -97,11 +97,22 @@ def find_node(network: Network, at: str, metres_per_unit: float = 1.0, key: str 
         raise CaseError(
             f"{key} = '{at}': {len(starts)} node ids begin like this ({_listed(network, starts)}); write more of one"
         )
-    match = _COORDINATES.fullmatch(at)
-    if match:
-        place = np.array([float(number) for number in match.groups()]) * metres_per_unit
+    place = coordinates(at, metres_per_unit)
+    if place is not None:
         return _nearest(network, place, f"{key} = '{at}'")
     raise CaseError(f"{key} = '{at}': {_nothing_fits(network, at)}")
+
+
+def coordinates(at: str, metres_per_unit: float = 1.0) -> FloatArray | None:
+    """Return the place that a text of three coordinates names, in metres; None where it is no such text.
+
+    Examples
+    --------
+    >>> coordinates("0 10 -2", 1e-3)
+    array([ 0.   ,  0.01 , -0.002])
+    """
+    match = _COORDINATES.fullmatch(at)
+    return None if match is None else np.array([float(number) for number in match.groups()]) * metres_per_unit
 
 
 def _named(network: Network, at: str, key: str) -> int | None:

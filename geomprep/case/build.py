@@ -153,6 +153,7 @@ def _context(case: Case, drawn: Drawn, assigned: Assigned, findings: tuple[Findi
         findings=findings,
         repairs=drawn.repairs,
         decisions=read_decisions(case.folder),
+        settings=drawn.settings,
         sources=_sources(assigned.network.origins, findings),
         steps=_STEPS,
     )

@@ -4,8 +4,9 @@ from __future__ import annotations
 
 from pathlib import Path
 
-from geomprep.case.build import build
 from geomprep.case.decisions import WITHDRAWN, append_decision, read_decisions, standing
+from geomprep.case.file import read_case
+from geomprep.case.geometry import draw_repairs
 from geomprep.errors import InputError
 from geomprep.model import Decision, Repair
 
@@ -35,7 +36,7 @@ def decision_rows(case: Path) -> list[dict[str, str]]:
             "decided by": recorded[repair.id].recorded_by if repair.id in recorded else repair.verdict_by,
             "reason": repair.reason,
         }
-        for repair in build(case, dry_run=True).repairs
+        for repair in draw_repairs(read_case(case))
     ]
 
 
@@ -65,7 +66,7 @@ def record_decision(case: Path, key: str, choice: str | None, note: str, by: str
     if choice is None:
         decision = Decision(_one_of(key, list(standing(read_decisions(case.parent)))), WITHDRAWN, note, by)
     else:
-        repairs = {repair.id: repair for repair in build(case, dry_run=True).repairs}
+        repairs = {repair.id: repair for repair in draw_repairs(read_case(case))}
         repair = repairs[_one_of(key, list(repairs))]
         decision = Decision(repair.id, _checked(repair, choice), note, by)
     append_decision(case.parent, decision)

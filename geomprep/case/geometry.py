@@ -5,40 +5,30 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass, replace
 from pathlib import Path
-from typing import Any, TypeVar
+from typing import Any
 
+import numpy as np
 import numpy.typing as npt
+from scipy.spatial import cKDTree
 
 from geomprep.anatomy import NamedPoint, name_segments, read_names
-from geomprep.assign import Ends, resolve_ends
-from geomprep.case.decisions import read_decisions, standing
+from geomprep.assign import Ends, coordinates, resolve_ends
+from geomprep.case.replay import RepairRules, repair_rules
 from geomprep.case.sections import Case
 from geomprep.errors import CaseError, OpenQuestions, Question
-from geomprep.export import InputRecord
+from geomprep.export import InputRecord, SettingRecord
 from geomprep.files import FileContents, read_files
 from geomprep.files.meaning import to_centrelines
 from geomprep.findings import Finding
 from geomprep.measure import junctions, measure_segments
-from geomprep.model import Centrelines, Network, Repair, concatenate
-from geomprep.repair import (
-    PERSON,
-    Given,
-    JoinSettings,
-    RadiusSettings,
-    StepResult,
-    Verdict,
-    Verdicts,
-    join,
-    mend_graph,
-    mend_radii,
-)
+from geomprep.model import BoolArray, Centrelines, FloatArray, Network, Repair, concatenate
+from geomprep.repair import OPEN, Given, StepResult, join, mend_graph, mend_radii
 from geomprep.segments import leave_out_unreached, order_segments, orient, resample, split
 from geomprep.units import length_factor
 
-__all__ = ["Drawn", "draw_network"]
+__all__ = ["Drawn", "draw_network", "draw_repairs"]
 
 Progress = Callable[[str, float], None]
-Settings = TypeVar("Settings")
 
 
 @dataclass(frozen=True, eq=False)
@@ -55,6 +45,8 @@ class Drawn:
         What was read, in the order of the case.
     findings : tuple of Finding
     repairs : tuple of Repair
+    settings : tuple of SettingRecord
+        Of every repair step.
     """
 
     network: Network
@@ -62,6 +54,7 @@ class Drawn:
     inputs: tuple[InputRecord, ...]
     findings: tuple[Finding, ...]
     repairs: tuple[Repair, ...]
+    settings: tuple[SettingRecord, ...]
 
 
 @dataclass(frozen=True, eq=False)
@@ -73,6 +66,7 @@ class _Cut:
     inputs: tuple[InputRecord, ...]
     findings: tuple[Finding, ...]
     repairs: tuple[Repair, ...]
+    settings: tuple[SettingRecord, ...]
 
 
 def draw_network(case: Case, progress: Progress) -> Drawn:
@@ -98,6 +92,35 @@ def draw_network(case: Case, progress: Progress) -> Drawn:
         Inputs state different frames, or an end cannot be found.
     """
     cut = _cut(case, progress)
+    try:
+        return _with_ends(case, cut, progress)
+    except CaseError as fault:
+        asked = sum(repair.verdict_by == OPEN for repair in cut.repairs)
+        if not asked:
+            raise
+        hint = (
+            f"{asked} decision(s) on repairs are open and may be why: 'geomprep decide {case.file} --list' shows them"
+        )
+        raise CaseError(f"{fault} ({hint})") from fault
+
+
+def draw_repairs(case: Case) -> tuple[Repair, ...]:
+    """Repairs of the lines of a case, whether or not inlets and outlets can be found yet.
+
+    Parameters
+    ----------
+    case : Case
+
+    Raises
+    ------
+    FileError, OpenQuestions, CaseError
+        As :func:`draw_network`, but for the ends.
+    """
+    return _cut(case, lambda stage, part: None).repairs
+
+
+def _with_ends(case: Case, cut: _Cut, progress: Progress) -> Drawn:
+    """Name, orient and measure a network fresh from its graph."""
     named = name_segments(cut.network, _names(case))
     ends = resolve_ends(named.network, case.inlets, case.outlets, _metres_per_unit(case))
     reached = leave_out_unreached(named.network, ends.inlet_nodes, cut.raw_points)
@@ -108,27 +131,23 @@ def draw_network(case: Case, progress: Progress) -> Drawn:
     ordered = order_segments(network, ends.inlet_nodes, ends.outlet_nodes)
     network = junctions(measure_segments(ordered.network))
     findings = (*cut.findings, *named.findings, *ends.findings, *ordered.findings)
-    return Drawn(network, ends, cut.inputs, findings, (*cut.repairs, *reached.repairs))
+    return Drawn(network, ends, cut.inputs, findings, (*cut.repairs, *reached.repairs), cut.settings)
 
 
 def _cut(case: Case, progress: Progress) -> _Cut:
     """Join the lines of all files and cut the graph into segments."""
-    verdicts = recorded_verdicts(case)
-    joined, records, seen = _joined(case, verdicts, progress)
+    rules = repair_rules(case)
+    joined, records, seen = _joined(case, rules, progress)
     progress("split", 0.5)
     network = _resampled(case, split(joined.graph))
-    unknown = verdicts.unknown(repair.id for repair in joined.repairs)
-    return _Cut(network, joined.graph.raw_points, records, (*seen, *joined.findings, *unknown), joined.repairs)
-
-
-def recorded_verdicts(case: Case) -> Verdicts:
-    """Decisions that stand beside a case, as verdicts."""
-    found = standing(read_decisions(case.folder))
-    return Verdicts({key: Verdict(decision.choice, PERSON) for key, decision in found.items()})
+    unknown = rules.verdicts.unknown(repair.id for repair in joined.repairs)
+    return _Cut(
+        network, joined.graph.raw_points, records, (*seen, *joined.findings, *unknown), joined.repairs, rules.records
+    )
 
 
 def _joined(
-    case: Case, verdicts: Verdicts, progress: Progress
+    case: Case, rules: RepairRules, progress: Progress
 ) -> tuple[StepResult, tuple[InputRecord, ...], tuple[Finding, ...]]:
     """Read all files of a case, give their numbers a meaning, join their lines."""
     progress("read", 0.05)
@@ -137,13 +156,14 @@ def _joined(
     centrelines, findings = _centrelines(case, contents)
     del contents
     progress("join", 0.3)
-    mended = mend_radii(centrelines, _stated(case.radius, RadiusSettings), verdicts)
+    mended = mend_radii(centrelines, rules.settings["radius"], rules.verdicts)
     del centrelines
-    joined = join(mended.centrelines, _stated(case.join, JoinSettings), verdicts)
+    joined = join(mended.centrelines, rules.settings["join"], rules.verdicts)
     progress("repair", 0.45)
     # those of joining first: raw points that it dropped name its repairs by their number
     before = (*joined.repairs, *mended.repairs)
-    whole = mend_graph(joined.graph, case.steps, Given(verdicts, _voxel(case)), before)
+    graph = replace(joined.graph, protected=joined.graph.protected | _named_points(case, joined.graph.points))
+    whole = mend_graph(graph, rules.settings, Given(rules.verdicts, _voxel(case)), before)
     return replace(whole, findings=(*joined.findings, *whole.findings)), records, findings
 
 
@@ -194,9 +214,16 @@ def _input_records(case: Case, contents: list[FileContents]) -> tuple[InputRecor
     )
 
 
-def _stated(section: object, kind: type[Settings]) -> Settings:
-    """Settings of a step: what the case states, defaults for the rest."""
-    return kind(**{name: value for name, value in vars(section).items() if value is not None})
+def _named_points(case: Case, points: FloatArray) -> BoolArray:
+    """Points that stand nearest to a name or to a place of an inlet or outlet: repairs leave their vessels alone."""
+    factor = _metres_per_unit(case)
+    places = [point.position for point in _names(case)]
+    at = [end.at for end in case.inlets] + [end.at for end in case.outlets]
+    places += [tuple(place.tolist()) for text in at if (place := coordinates(text, factor)) is not None]
+    named = np.zeros(len(points), np.bool_)
+    if places:
+        named[cKDTree(points).query(np.array(places))[1]] = True
+    return named
 
 
 def _resampled(case: Case, network: Network) -> Network:

@@ -83,6 +83,7 @@ def _column_weight(network: Network) -> float:
 def _write_lines(file: Path, network: Network, state: SteadyState, station_height: FloatArray) -> None:
     """Segments as poly-lines in metres with what a viewer may colour them by."""
     stations, segments = network.stations, network.segments
+    pressure = station_pressure(network, state, station_height)
     write_lines(
         file,
         stations.position,
@@ -92,7 +93,7 @@ def _write_lines(file: Path, network: Network, state: SteadyState, station_heigh
             "radius": stations.radius,
             "area": stations.area,
             "arc_length": stations.distance,
-            "pressure": station_pressure(network, state, station_height),
+            "pressure": pressure,
         },
         {
             "segment": np.arange(len(segments)),

@@ -20,6 +20,7 @@ __all__ = [
     "JoinSection",
     "OutletSection",
     "RadiusSection",
+    "ReplaySection",
     "SegmentsSection",
     "StationSpacing",
     "SurroundingsSection",
@@ -64,6 +65,13 @@ class RadiusSection:
     use: bool | None = None
     spike_ratio: float | None = None
     end_ratio: float | None = None
+
+
+@dataclass(frozen=True)
+class ReplaySection:
+    """``[repair.replay]``: a network file whose verdicts and settings hold, relative to the folder of the case."""
+
+    network: str | None = None
 
 
 @dataclass(frozen=True)
@@ -189,6 +197,7 @@ class Case:
     join: JoinSection
     radius: RadiusSection
     steps: dict[str, Any]
+    replay: ReplaySection
     segments: SegmentsSection
     anatomy: AnatomySection
     walls: dict[str, WallsSection]

@@ -1,6 +1,6 @@
 """The hand-over: neutral network file with schema and validator, tables, overview."""
 
-from geomprep.export.context import ExportContext, ImagingState, InputRecord
+from geomprep.export.context import ExportContext, ImagingState, InputRecord, SettingRecord
 from geomprep.export.neutral import encode, neutral_document, write_network
 from geomprep.export.overview import overview_svg, write_overview
 from geomprep.export.schema import schema, schema_text
@@ -11,6 +11,7 @@ __all__ = [
     "ExportContext",
     "ImagingState",
     "InputRecord",
+    "SettingRecord",
     "ValidationReport",
     "encode",
     "neutral_document",

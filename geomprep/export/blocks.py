@@ -197,5 +197,6 @@ _MAKERS: dict[str, Callable[[Network, SteadyState, ExportContext], Any]] = {
     "sources": _sources,
     "provenance": lambda network, state, context: {"case_sha256": context.case_sha256, "steps": list(context.steps)},
     "provenance.inputs": _inputs,
+    "provenance.settings": lambda network, state, context: [_table(row) for row in context.settings],
 }
 """Table -> what is not simply an attribute of the network."""

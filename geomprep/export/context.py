@@ -11,7 +11,7 @@ from geomprep.errors import InputError
 from geomprep.findings import Finding
 from geomprep.model import Decision, IntArray, Repair
 
-__all__ = ["ExportContext", "ImagingState", "InputRecord"]
+__all__ = ["ExportContext", "ImagingState", "InputRecord", "SettingRecord"]
 
 
 @dataclass(frozen=True)
@@ -37,6 +37,15 @@ class InputRecord:
     frame: str
     points: int
     lines: int
+
+
+@dataclass(frozen=True)
+class SettingRecord:
+    """One setting of a repair step, its value as JSON text."""
+
+    step: str
+    key: str
+    value: str
 
 
 @dataclass(frozen=True)
@@ -78,6 +87,8 @@ class ExportContext:
     findings : tuple of Finding
     repairs : tuple of Repair
     decisions : tuple of Decision
+    settings : tuple of SettingRecord
+        Of every repair step.
     sources : tuple of mapping
         Literature rows in use, each with key, citation, doi, place and checked.
     steps : tuple of str
@@ -101,6 +112,7 @@ class ExportContext:
     findings: tuple[Finding, ...] = ()
     repairs: tuple[Repair, ...] = ()
     decisions: tuple[Decision, ...] = ()
+    settings: tuple[SettingRecord, ...] = ()
     sources: tuple[Mapping[str, object], ...] = ()
     steps: tuple[str, ...] = ()
     station_repair: IntArray | None = field(default=None, repr=False)

@@ -16,6 +16,8 @@ from geomprep.model import BASIS_NAMES, NODE_ROLES, VESSEL_CLASSES, Network, Ste
 
 __all__ = ["table_texts", "write_tables"]
 
+_ROWS_AT_ONCE = 10_000
+
 Columns = Mapping[str, Sequence[object] | npt.NDArray[Any]]
 
 
@@ -70,8 +72,12 @@ def table_texts(network: Network, state: SteadyState, context: ExportContext) ->
 def _csv(columns: Columns) -> str:
     """Columns as CSV (RFC 4180, lines ended by a line feed) with one header line."""
     header = ",".join(_quoted(name) for name in columns)
-    rows = map(",".join, zip(*(_cells(column) for column in columns.values()), strict=True))
-    return "\n".join([header, *rows]) + "\n"
+    count = max(map(len, columns.values()), default=0)
+    blocks = [header]
+    for start in range(0, count, _ROWS_AT_ONCE):  # the cells of all rows as texts would need much room
+        cells = (_cells(column[start : start + _ROWS_AT_ONCE]) for column in columns.values())
+        blocks.append("\n".join(map(",".join, zip(*cells, strict=True))))
+    return "\n".join(blocks) + "\n"
 
 
 def _cells(column: Sequence[object] | npt.NDArray[Any]) -> list[str]:

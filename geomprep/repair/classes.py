@@ -56,6 +56,8 @@ def uses(centrelines: Centrelines, edges: IntArray, edge_class: Uint8Array) -> U
         Raw points at both ends of each edge of the lines.
     edge_class : (e,) uint8 array
     """
+    if len(edge_class) and (edge_class == edge_class[0]).all():
+        return _of_one_class(centrelines, edges, edge_class[0])
     by = np.zeros((len(VESSEL_CLASSES), centrelines.n_points), np.bool_)
     for code in np.unique(edge_class):
         by[code, edges[edge_class == code]] = True
@@ -73,6 +75,15 @@ def uses(centrelines: Centrelines, edges: IntArray, edge_class: Uint8Array) -> U
     code = np.concatenate((code_of[first], np.full(len(second), VEIN, np.uint8)))
     row = (edge_class == VEIN).astype(np.int64)[:, None]
     return Uses(raw, code, number[row, edges] if len(second) else number[0][edges])
+
+
+def _of_one_class(centrelines: Centrelines, edges: IntArray, code: np.uint8) -> Uses:
+    """The used points where all lines are of one class."""
+    used = np.zeros(centrelines.n_points, np.bool_)
+    used[edges] = True
+    raw = np.flatnonzero(used)
+    number = np.cumsum(used) - 1
+    return Uses(raw, np.full(len(raw), code, np.uint8), number.take(edges))
 
 
 def told_apart(code: Uint8Array, label: IntArray) -> tuple[IntArray, Uint8Array]:
@@ -98,7 +109,7 @@ def told_apart(code: Uint8Array, label: IntArray) -> tuple[IntArray, Uint8Array]
     (array([0, 2, 1]), array([1, 0, 2], dtype=uint8))
     """
     count = int(label.max(initial=-1)) + 1
-    if len(np.unique(code)) <= 1:
+    if len(code) == 0 or (code == code[0]).all():
         return label, np.full(count, code[0] if len(code) else UNKNOWN, np.uint8)
     has = np.zeros((len(VESSEL_CLASSES), count), np.bool_)
     has[code, label] = True

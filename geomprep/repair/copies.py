@@ -140,6 +140,7 @@ def _absorbed_in_turn(
                 if asks.choice == "leave":
                     findings += [_veins_finding(run, stretch) for stretch in aside]
                     _leave_alone(state, run, beside, aside)
+                    state.left_alone += [int(draft.edges[run.edge[0], 0]), int(draft.edges[run.edge[-1], 1])]
             declined = None if aside else _declined(draft, run, stretches, verdicts)
             if declined is not None:
                 left.append(declined)

@@ -18,7 +18,7 @@ from geomprep.repair.draft import LEFT_ALONE, Draft, compacted, lengths, merged
 from geomprep.repair.ends import join_near_open_ends
 from geomprep.repair.joints import join_sides
 from geomprep.repair.overlaps import Held
-from geomprep.repair.parts import components, isolated_parts
+from geomprep.repair.parts import components
 from geomprep.repair.radii import settled_radii
 from geomprep.repair.runs import laid_in_runs
 from geomprep.repair.settings import JoinSettings
@@ -93,7 +93,6 @@ def join(
     graph, radius_findings = _finished(draft)
     findings += radius_findings
     findings += class_findings(centrelines.vessel_class, draft.edge_class, draft.edges, draft.points)
-    findings += isolated_parts(draft, graph.radius)
     return JoinResult(graph, repairs, findings)
 
 

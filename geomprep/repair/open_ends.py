@@ -91,9 +91,11 @@ class Links:
 
 
 def tips(branches: Branches) -> Tips:
-    """List the open ends of a graph that are not protected."""
+    """List the open ends of a graph; lines protected at both ends, such as undecided copies, have none."""
     graph = branches.graph
-    chain, side = np.nonzero((branches.degree[branches.ends] == 1) & ~graph.protected[branches.ends])
+    held = graph.protected[branches.ends]
+    undecided = (held[:, 0] & held[:, 1])[:, None]
+    chain, side = np.nonzero((branches.degree[branches.ends] == 1) & ~undecided)
     point = branches.ends[chain, side]
     radius = _end_radius(branches, chain, side, graph.radius[point])
     way = branches.way_out(chain, side, _SPAN * radius)

@@ -2,16 +2,18 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 import numpy as np
 from scipy.sparse import coo_array
 from scipy.sparse.csgraph import connected_components
 
 from geomprep.curves import piece_integrals
 from geomprep.findings import Finding, Severity
-from geomprep.model import VESSEL_CLASSES, FloatArray, IntArray
-from geomprep.repair.draft import Draft, lengths
+from geomprep.model import VESSEL_CLASSES, FloatArray, IntArray, PointGraph, Uint8Array
+from geomprep.repair.steps import Given, StepResult
 
-__all__ = ["components", "isolated_parts"]
+__all__ = ["PartSettings", "components", "report_parts"]
 
 _LISTED = 100
 
@@ -23,41 +25,60 @@ def components(n_points: int, edges: IntArray) -> tuple[int, IntArray]:
     return int(count), label.astype(np.int64)
 
 
-def isolated_parts(draft: Draft, radius: FloatArray) -> tuple[Finding, ...]:
-    """Report every component but the longest of each vessel class.
+@dataclass(frozen=True)
+class PartSettings:
+    """Whether parts are reported.
+
+    Attributes
+    ----------
+    use : bool
+        False reports none.
+    """
+
+    use: bool = True
+
+
+def report_parts(graph: PointGraph, settings: PartSettings, given: Given) -> StepResult:
+    """Report every connected part but the longest of each vessel class.
 
     Parameters
     ----------
-    draft : Draft
-    radius : (n,) float array
+    graph : PointGraph
+    settings : PartSettings
+    given : Given
 
     Returns
     -------
-    tuple of Finding
-        Longest first; beyond 100 the rest is summed up in one.
+    StepResult
+        The graph given. Longest first; beyond 100 the rest is summed up in one finding.
     """
-    count, label = components(len(draft.points), draft.edges)
-    if count < 2:
-        return ()
-    part = label[draft.edges[:, 0]]
-    step = lengths(draft)
+    count, label = components(graph.n_points, graph.edges)
+    if count < 2 or not settings.use:
+        return StepResult(graph)
+    part = label[graph.edges[:, 0]]
+    ends, size = graph.points[graph.edges], graph.radius[graph.edges]
+    step = np.linalg.norm(ends[:, 1] - ends[:, 0], axis=1)
     length = np.bincount(part, step, minlength=count).astype(np.float64)
-    size = piece_integrals(step, radius[draft.edges[:, 0]], radius[draft.edges[:, 1]])[:, 0]
-    volume = np.bincount(part, size, minlength=count).astype(np.float64)
+    volume = np.bincount(part, piece_integrals(step, size[:, 0], size[:, 1])[:, 0], minlength=count).astype(np.float64)
     code = np.zeros(count, np.uint8)
-    np.maximum.at(code, part, draft.edge_class)
-    order = np.lexsort((np.arange(count), -length, code))
-    main = np.ones(count, np.bool_)
-    main[1:] = np.diff(code[order].astype(np.int64)) != 0
-    rest = order[~main]
-    rest = rest[np.argsort(-length[rest], kind="stable")]
+    np.maximum.at(code, label, graph.vessel_class)
+    rest = _all_but_longest(code, length)
     place = np.empty(count, np.int64)
-    place[part[::-1]] = draft.edges[::-1, 0]
+    place[part[::-1]] = graph.edges[::-1, 0]
     found = [
-        _part_finding(draft.points[place[number]], float(length[number]), float(volume[number]), int(code[number]))
+        _part_finding(graph.points[place[number]], float(length[number]), float(volume[number]), int(code[number]))
         for number in rest[:_LISTED].tolist()
     ]
-    return (*found, *_rest_finding(length[rest[_LISTED:]], volume[rest[_LISTED:]]))
+    return StepResult(graph, (), (*found, *_rest_finding(length[rest[_LISTED:]], volume[rest[_LISTED:]])))
+
+
+def _all_but_longest(code: Uint8Array, length: FloatArray) -> IntArray:
+    """Parts that are not the longest of their class, longest first."""
+    order = np.lexsort((np.arange(len(length)), -length, code))
+    main = np.ones(len(length), np.bool_)
+    main[1:] = np.diff(code[order].astype(np.int64)) != 0
+    rest = order[~main]
+    return rest[np.argsort(-length[rest], kind="stable")]
 
 
 def _part_finding(place: FloatArray, length: float, volume: float, code: int) -> Finding:

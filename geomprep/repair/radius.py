@@ -175,13 +175,12 @@ def _has_steps(value: FloatArray, edges: IntArray, settings: RadiusSettings) -> 
 
 def _profile(raw_points: FloatArray, raw_of_place: IntArray, value: FloatArray, edges: IntArray) -> _Profile:
     """Chains of places with ln r and arc length along them."""
-    cut = chains(len(value), edges)
-    place, offsets = _in_order(cut, _keys(edges, len(value)))
-    degree = degrees(len(value), edges)
+    place, offsets = _in_order(chains(len(value), edges), _keys(edges, len(value)))
     first, last = offsets[:-1], offsets[1:] - 1
     inner = np.ones(len(place), np.bool_)
     inner[first] = inner[last] = False
-    open_start, open_end = (degree[place[rows]] == 1 for rows in (first, last))
+    is_open = degrees(len(value), edges) == 1
+    open_start, open_end = is_open[place[first]], is_open[place[last]]
     chain = np.repeat(np.arange(len(first)), np.diff(offsets))
     points = raw_points.take(raw_of_place[place], axis=0)
     along = arc_length(points, offsets)

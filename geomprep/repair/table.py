@@ -14,6 +14,7 @@ from geomprep.repair.holes import HoleSettings, fill_holes
 from geomprep.repair.inside import CopySettings, drop_copies
 from geomprep.repair.kissing import KissingSettings, part_kissing
 from geomprep.repair.loops import LoopSettings, name_loops
+from geomprep.repair.parts import PartSettings, report_parts
 from geomprep.repair.paths import PathSettings, smooth_paths
 from geomprep.repair.spurs import SpurSettings, drop_spurs
 from geomprep.repair.steps import Given, Step, StepResult, run_steps
@@ -41,6 +42,7 @@ STEPS: Final[tuple[StepRow, ...]] = (
     StepRow("gaps", GapSettings, close_gaps, "bridge gaps from end to end and from end to side"),
     StepRow("stray", StraySettings, drop_stray, "drop short parts that hang together with nothing"),
     StepRow("paths", PathSettings, smooth_paths, "smooth jagged paths by the noise declared"),
+    StepRow("parts", PartSettings, report_parts, "report parts that hang together with nothing else"),
     StepRow("loops", LoopSettings, name_loops, "name the loops that are kept"),
     StepRow("floor", FloorSettings, report_floor, "report radii at the floor of partial volume"),
 )

@@ -161,7 +161,7 @@ def test_veins_are_fused_only_within_the_tolerance(lines: Lines) -> None:
     decided = Verdicts({question.id: Verdict("fuse", "person")})
     fused = join(lines([one, other + np.array([0.04, 0, 0])], 1.0, classes=[2, 2]), verdicts=decided)
     assert junction_degrees(fused.graph) == {1: 2}
-    assert [finding.kind for finding in beside.findings] == ["overlapping veins", "isolated part"]
+    assert [finding.kind for finding in beside.findings] == ["overlapping veins"]
 
 
 def test_copies_of_different_classes_stay_and_unknown_ones_fuse(lines: Lines) -> None:
@@ -217,7 +217,7 @@ def test_doubled_vein_left_to_a_person_is_not_joined_at_its_ends(lines: Lines) -
     result = join(lines([one, copy], 1.0, classes=[2, 2]))
     assert junction_degrees(result.graph) == {1: 4}
     assert [(repair.kind, repair.verdict_by) for repair in result.repairs] == [("overlapping veins", "open")]
-    assert [finding.kind for finding in result.findings] == ["overlapping veins", "isolated part"]
+    assert [finding.kind for finding in result.findings] == ["overlapping veins"]
     arteries = join(lines([one, copy], 1.0))
     assert junction_degrees(arteries.graph) == {1: 2}
 

@@ -12,6 +12,8 @@ import pytest
 from geomprep.errors import InputError
 from geomprep.model import Centrelines, PointGraph, chains, degrees
 from geomprep.repair import join
+from geomprep.repair.parts import PartSettings, report_parts
+from geomprep.repair.steps import Given
 
 Lines = Callable[..., Centrelines]
 Graphs = Callable[[PointGraph], nx.MultiGraph]
@@ -130,17 +132,17 @@ def test_shuffled_two_point_lines_give_the_same_network_as_poly_lines(lines: Lin
 
 
 def test_second_small_component_is_named(lines: Lines) -> None:
-    result = join(lines([[(0, 0, 0), (0, 0, 90)], [(30, 0, 0), (30, 0, 6)], [(60, 0, 0), (60, 0, 2)]], 1.0))
-    parts = [finding for finding in result.findings if finding.kind == "isolated part"]
-    assert [part.value for part in parts] == [6.0, 2.0]
+    graph = join(lines([[(0, 0, 0), (0, 0, 90)], [(30, 0, 0), (30, 0, 6)], [(60, 0, 0), (60, 0, 2)]], 1.0)).graph
+    assert [part.value for part in report_parts(graph, PartSettings(), Given()).findings] == [6.0, 2.0]
 
 
 def test_arteries_and_veins_are_both_main_parts(lines: Lines) -> None:
-    result = join(lines([[(0, 0, 0), (0, 0, 90)], [(30, 0, 0), (30, 0, 6)]], 1.0, classes=[1, 2]))
-    assert result.findings == ()
+    graph = join(lines([[(0, 0, 0), (0, 0, 90)], [(30, 0, 0), (30, 0, 6)]], 1.0, classes=[1, 2])).graph
+    assert report_parts(graph, PartSettings(), Given()).findings == ()
 
 
 def test_many_parts_are_summed_up(lines: Lines) -> None:
-    result = join(lines([[(9 * k, 0, 0), (9 * k, 0, 5)] for k in range(150)], 1.0))
-    assert len(result.findings) == 101
-    assert "49 smaller parts more: length 2.45e+05 mm" in result.findings[-1].message
+    graph = join(lines([[(9 * k, 0, 0), (9 * k, 0, 5)] for k in range(150)], 1.0)).graph
+    findings = report_parts(graph, PartSettings(), Given()).findings
+    assert len(findings) == 101
+    assert "49 smaller parts more: length 2.45e+05 mm" in findings[-1].message

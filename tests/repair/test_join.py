@@ -11,6 +11,8 @@ import pytest
 from geomprep.errors import InputError
 from geomprep.model import Centrelines, PointGraph, degrees
 from geomprep.repair import JoinSettings, join
+from geomprep.repair.parts import PartSettings, report_parts
+from geomprep.repair.steps import Given
 
 Lines = Callable[..., Centrelines]
 
@@ -130,7 +132,7 @@ def test_doubled_edges_count_once_and_parallel_lines_stay(lines: Lines) -> None:
 
 def test_isolated_part_is_reported_with_length_and_volume(lines: Lines) -> None:
     result = join(lines([[(0, 0, 0), (0, 0, 50)], [(40, 0, 0), (40, 0, 3)]], [1.0, 2.0]))
-    (part,) = result.findings
+    (part,) = report_parts(result.graph, PartSettings(), Given()).findings
     assert part.kind == "isolated part"
     assert part.value == pytest.approx(3.0)
     assert f"volume {1e9 * 12 * np.pi:.4g} mm³" in part.message  # π 2² 3
