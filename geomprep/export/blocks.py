@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import dataclasses
 from collections.abc import Callable, Mapping
+from functools import cache
 from pathlib import PurePath
 from typing import Any
 
@@ -172,7 +173,13 @@ def _walls(network: Network) -> Walls:
 
 def _table(record: Any) -> Flat:
     """Fields of a small record."""
-    return {item.name: getattr(record, item.name) for item in dataclasses.fields(record)}
+    return {name: getattr(record, name) for name in _names(record.__class__)}
+
+
+@cache
+def _names(kind: type[Any]) -> tuple[str, ...]:
+    """Names of the fields of a kind of record; there may be thousands of one kind."""
+    return tuple(item.name for item in dataclasses.fields(kind))
 
 
 _MAKERS: dict[str, Callable[[Network, SteadyState, ExportContext], Any]] = {

@@ -62,7 +62,7 @@ def laid_in_runs(draft: Draft) -> Draft:
     inner = np.ones(len(cut.point), np.bool_)
     inner[cut.offsets[1:] - 1] = False
     turned = (draft.edges[cut.edge, 0] != cut.point[inner])[:, None]
-    edges, radius = draft.edges[cut.edge], draft.end_radius[cut.edge]
+    edges, radius = draft.edges.take(cut.edge, axis=0), draft.end_radius.take(cut.edge, axis=0)
     return replace(
         draft,
         edges=np.where(turned, edges[:, ::-1], edges),
