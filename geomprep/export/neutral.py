@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import os
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
 from itertools import chain
 from math import isfinite
 from pathlib import Path
@@ -11,7 +11,7 @@ from typing import Any
 
 import numpy as np
 
-from geomprep.atomic import write_atomic
+from geomprep.atomic import atomic_writer
 from geomprep.errors import NetworkFileError
 from geomprep.export.blocks import filled_tables
 from geomprep.export.checks.basis import basis_faults
@@ -105,7 +105,10 @@ def write_network(
         document["stations"] = {**inside, "companion": block}
         keep = block["file"]
         written = (target.parent / keep, target)
-    write_atomic(target, encode(document))
+    _refuse_infinite("", document)
+    with atomic_writer(target) as stream:
+        for piece in _pieces(document):
+            stream.write(piece)
     remove_companions(target.parent, keep)
     return written
 
@@ -129,10 +132,20 @@ def encode(document: Mapping[str, Any]) -> bytes:
     Traceback (most recent call last):
     geomprep.errors.NetworkFileError: nodes.height[1]: nan cannot be written; every number must be finite
     """
+    _refuse_infinite("", document)
+    return b"".join(_pieces(document))
+
+
+def _pieces(document: Mapping[str, Any]) -> Iterator[bytes]:
+    """The document table by table, so that the text of a large one need not be held whole."""
     import orjson
 
-    _refuse_infinite("", document)
-    return orjson.dumps(document, option=orjson.OPT_SERIALIZE_NUMPY | orjson.OPT_APPEND_NEWLINE)
+    before = b"{"
+    for name, value in document.items():
+        yield before + orjson.dumps(name) + b":"
+        yield orjson.dumps(value, option=orjson.OPT_SERIALIZE_NUMPY)
+        before = b","
+    yield b"}\n" if document else b"{}\n"
 
 
 def _refuse_infinite(place: str, value: Any) -> None:

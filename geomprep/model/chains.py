@@ -61,7 +61,7 @@ def degrees(n_points: int, edges: IntArray) -> IntArray:
     >>> degrees(3, np.array([[0, 1], [1, 1]]))
     array([1, 3, 0])
     """
-    return np.bincount(edges.ravel(), minlength=n_points).astype(np.int64)
+    return np.bincount(edges.ravel(), minlength=n_points).astype(np.int64, copy=False)
 
 
 def chains(n_points: int, edges: IntArray, stop: BoolArray | None = None) -> Chains:

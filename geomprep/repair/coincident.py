@@ -79,7 +79,8 @@ def join_near_ends(draft: Draft, within: float) -> tuple[Draft, int, tuple[Findi
         Groups that a chain of near points makes wider than twice the distance; only
         members closer than that have been merged there.
     """
-    end = np.flatnonzero((degree(draft) != 2) & (degree(draft) > 0))
+    ends = degree(draft)
+    end = np.flatnonzero((ends != 2) & (ends > 0))
     radius = point_radius(draft)[end]
     pairs = near_pairs(draft.points[end], radius, within)
     pairs = pairs[may_join(draft.vessel_class[end[pairs[:, 0]]], draft.vessel_class[end[pairs[:, 1]]])]
