@@ -1,9 +1,18 @@
 """Lengths, volumes, profile integrals, radius profiles, narrowings, curvature and junctions of a network."""
 
+from geomprep.measure.cross_sections import cross_sections
 from geomprep.measure.curves import curvature, tortuosity
 from geomprep.measure.junctions import junctions
 from geomprep.measure.narrowings import narrowings
 from geomprep.measure.profiles import radius_profiles
 from geomprep.measure.segments import measure_segments
 
-__all__ = ["curvature", "junctions", "measure_segments", "narrowings", "radius_profiles", "tortuosity"]
+__all__ = [
+    "cross_sections",
+    "curvature",
+    "junctions",
+    "measure_segments",
+    "narrowings",
+    "radius_profiles",
+    "tortuosity",
+]
