@@ -2,6 +2,7 @@
 
 from geomprep.measure.cross_sections import cross_sections
 from geomprep.measure.curves import curvature, tortuosity
+from geomprep.measure.junction_zones import junction_zones
 from geomprep.measure.junctions import junctions
 from geomprep.measure.narrowings import narrowings
 from geomprep.measure.profiles import radius_profiles
@@ -10,6 +11,7 @@ from geomprep.measure.segments import measure_segments
 __all__ = [
     "cross_sections",
     "curvature",
+    "junction_zones",
     "junctions",
     "measure_segments",
     "narrowings",
