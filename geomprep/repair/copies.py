@@ -90,7 +90,7 @@ def _sampled(draft: Draft, laid: Runs, which: IntArray) -> tuple[Samples, IntArr
     ends = np.cumsum(counts)
     edge = np.arange(ends[-1]) + np.repeat(laid.offsets[which] - (ends - counts), counts)
     step = laid.along[edge + 1] - laid.along[edge]
-    pieces = np.maximum(np.ceil(step / _STEP), 1.0).astype(np.int64)
+    pieces = np.maximum(np.ceil(step / _STEP), 2.0).astype(np.int64)  # ends alone may lie on others by chance
     per_run = np.add.reduceat(pieces, ends - counts)
     number = np.arange(pieces.sum()) - np.repeat(np.cumsum(pieces) - pieces, pieces)
     part = np.insert(number / np.repeat(pieces, pieces), np.cumsum(per_run), 1.0)
@@ -201,7 +201,8 @@ def _beside(state: Fusing, forest: Forest, samples: Samples, run: Samples) -> Be
     row = np.concatenate((row, row), axis=1)
     start = state.points[state.edges[edge, 0]]
     part, distance = nearest_part(run.point[:, None], start, state.points[state.edges[edge, 1]] - start)
-    allowed = (row >= 0) & ~state.gone[edge] & may_join(draft.edge_class[edge], draft.edge_class[run.edge][:, None])
+    # the edge before a kept one may be of this very run
+    allowed = (row >= 0) & state.kept[edge] & may_join(draft.edge_class[edge], draft.edge_class[run.edge][:, None])
     distance = np.where(allowed, distance, np.inf)
     best = np.argmin(distance, axis=1)[:, None]
     edge, row = np.take_along_axis(edge, best, 1)[:, 0], np.take_along_axis(row, best, 1)[:, 0]

@@ -61,6 +61,8 @@ class Fusing:
         Room for new points behind the old ones.
     gone : (e,) bool array
         Absorbed edges.
+    kept : (e,) bool array
+        Edges of the kept network.
     on_kept : (n,) bool array
         Points that kept edges use.
     absorbed : list of Absorbed
@@ -72,6 +74,7 @@ class Fusing:
         self.end_radius = draft.end_radius.copy()
         self.points = np.concatenate((draft.points, np.empty((room, 3))))
         self.gone = np.zeros(len(draft.edges), np.bool_)
+        self.kept = np.zeros(len(draft.edges), np.bool_)
         self.on_kept = np.zeros(len(draft.points), np.bool_)
         self.degree = degree(draft)
         self.left_alone: list[int] = []  # points of doubled veins
@@ -84,6 +87,7 @@ class Fusing:
 
     def keep(self, edges: IntArray) -> None:
         """Take edges into the kept network."""
+        self.kept[edges] = True
         nodes = self.edges[edges].ravel()
         nodes = nodes[nodes < len(self.on_kept)]
         self.on_kept[nodes] = True

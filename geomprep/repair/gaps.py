@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from geomprep.errors import InputError
+from geomprep.findings import Finding, Severity
 from geomprep.model import FloatArray, PointGraph, Repair, anchor_ids
 from geomprep.repair.branches import Branches
 from geomprep.repair.bridges import Bridge, bridge_lines, with_bridges
@@ -118,7 +119,10 @@ def close_gaps(graph: PointGraph, settings: GapSettings, given: Given) -> StepRe
         repairs.append(_record(branches, found, chosen, row, (verdict.choice, verdict.by, options), line))
         if verdict.choice != LEAVE:
             bridges.append((row, line))
-    return StepResult(with_bridges(graph, [line for _, line in bridges]), tuple(repairs))
+    assumed = tuple(
+        _assumed(repairs[row]) for row, line in bridges if graph.vessel_class[list(line.ends)].min() != _ARTERY
+    )
+    return StepResult(with_bridges(graph, [line for _, line in bridges]), tuple(repairs), assumed)
 
 
 def _candidates(branches: Branches, found: Tips, settings: GapSettings) -> Links:
@@ -230,6 +234,18 @@ def _record(
         score=float(chosen.score[row]),
         conductance_before=0.0,
         conductance_after=0.0 if choice == LEAVE else line.conductance,
+    )
+
+
+def _assumed(repair: Repair) -> Finding:
+    """What a decided bridge outside arteries is: an assumption."""
+    return Finding(
+        "bridged by assumption",
+        Severity.WARNING,
+        f"a stretch that the image does not show is bridged by assumption ({repair.choice}, {repair.id}): what flows there "
+        "rests on a decision, not on a measurement",
+        where=repair.id,
+        position=repair.position,
     )
 
 

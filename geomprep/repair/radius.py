@@ -6,21 +6,19 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from geomprep.curves import arc_length, piece_integrals
+from geomprep.curves import piece_integrals
 from geomprep.errors import InputError
 from geomprep.model import (
     Basis,
     BoolArray,
     Centrelines,
-    Chains,
     FloatArray,
     IntArray,
     Repair,
     anchor_ids,
-    chains,
-    degrees,
 )
 from geomprep.repair.coincident import same_place
+from geomprep.repair.radius_profile import Profile, is_good, log_radii, place_edges, profile_of, used_points
 from geomprep.repair.verdicts import Verdicts
 
 __all__ = ["RadiusResult", "RadiusSettings", "mend_radii"]
@@ -28,6 +26,7 @@ __all__ = ["RadiusResult", "RadiusSettings", "mend_radii"]
 _LEAVE, _MEND = "leave", "interpolate"
 _HALF_WINDOW = 3
 _LONGEST_SPIKE = 2
+_SPIKE_RADII = 1.1
 _LONGEST_DECAY = 4
 _NEAR_END = 8
 
@@ -41,7 +40,8 @@ class RadiusSettings:
     use : bool
         False leaves every radius as it is.
     spike_ratio : float
-        A point, or two side by side, whose radius differs by this factor from the median around it is a spike.
+        A point, or a few side by side within a radius, whose radius differs by this factor from the median
+        around is a spike.
     end_ratio : float
         Points at an open end whose radius lies below this part of the radius further in have decayed.
 
@@ -71,27 +71,12 @@ class RadiusResult:
     repairs: tuple[Repair, ...]
 
 
-@dataclass(frozen=True, eq=False)
-class _Profile:
-    """ln r along all chains; NaN where the radius is none."""
-
-    place: IntArray
-    offsets: IntArray
-    points: FloatArray
-    log_radius: FloatArray
-    along: FloatArray
-    chain: IntArray
-    inner: BoolArray
-    open_start: BoolArray
-    open_end: BoolArray
-
-
 def mend_radii(centrelines: Centrelines, settings: RadiusSettings, verdicts: Verdicts) -> RadiusResult:
     """Replace impossible radii by a local fit, before lines are joined.
 
-    Zero, negative and missing radii, spikes of one or two points and the decay at open ends take the value that ln r has
-    between the good points beside them (at an end: the nearest good value). A narrowing or widening of three
-    points or more is left as it is. A chain without any good radius stays as it is, and joining refuses it.
+    Zero, negative and missing radii, spikes and the decay at open ends take the value that ln r has between the
+    good points beside them on the same vessel (at an end: the nearest good value). A narrowing or widening longer
+    than a radius is left as it is. A chain without any good radius stays as it is, and joining refuses it.
 
     Parameters
     ----------
@@ -107,64 +92,19 @@ def mend_radii(centrelines: Centrelines, settings: RadiusSettings, verdicts: Ver
     """
     if not settings.use or centrelines.line_radius is not None:
         return RadiusResult(centrelines, ())
-    used = _used_points(centrelines)
+    used = used_points(centrelines)
     label, first = same_place(centrelines.points[used])
-    value = _log_radius(centrelines.radius[used], label, len(first))
-    edges = _edges(centrelines, used, label)
+    value = log_radii(centrelines.radius[used], label, len(first))
+    edges = place_edges(centrelines, used, label)
     if not (np.isnan(value).any() or _has_steps(value, edges, settings)):
         return RadiusResult(centrelines, ())
-    profile = _profile(centrelines.points, used[first], value, edges)
+    profile = profile_of(centrelines.points, used[first], value, edges)
     kinds = _kinds(profile, settings)
-    if not kinds.any() and _is_good(centrelines.radius[used]).all():
+    if not kinds.any() and is_good(centrelines.radius[used]).all():
         return RadiusResult(centrelines, ())
     fitted = _fitted(profile, kinds > 0)
     repairs, mended = _records(centrelines, profile, (kinds, fitted), used[first], verdicts)
     return RadiusResult(_with_radii(centrelines, profile, (fitted, mended), (used, label)), repairs)
-
-
-def _used_points(centrelines: Centrelines) -> IntArray:
-    """Raw points on any line, rising."""
-    used = np.zeros(centrelines.n_points, np.bool_)
-    used[centrelines.connectivity] = True
-    return np.flatnonzero(used)
-
-
-def _log_radius(radius: FloatArray, label: IntArray, count: int) -> FloatArray:
-    """Mean ln r of the good radii stated at each place; NaN where none is good."""
-    good = _is_good(radius)
-    total = np.bincount(label[good], np.log(radius[good]), count)
-    number = np.bincount(label[good], minlength=count)
-    value: FloatArray = np.divide(total, number, out=np.full(count, np.nan), where=number > 0)
-    return value
-
-
-def _is_good(radius: FloatArray) -> BoolArray:
-    """Whether a radius can be."""
-    good: BoolArray = (radius > 0) & (radius < np.inf)
-    return good
-
-
-def _edges(centrelines: Centrelines, used: IntArray, label: IntArray) -> IntArray:
-    """Places at both ends of every step as drawn, each pair once."""
-    number = np.zeros(centrelines.n_points, np.int64)
-    number[used] = label
-    place = number[centrelines.connectivity]
-    inner = np.ones(len(place), np.bool_)
-    inner[centrelines.offsets[1:] - 1] = False
-    start = np.flatnonzero(inner[:-1] & (place[1:] != place[:-1]))
-    pairs = np.stack((place[start], place[start + 1]), axis=1)
-    keys = _keys(pairs, len(label))
-    ordered = np.sort(keys)
-    if (ordered[1:] != ordered[:-1]).all():
-        return pairs
-    return pairs[np.sort(np.unique(keys, return_index=True)[1])]
-
-
-def _keys(pairs: IntArray, count: int) -> IntArray:
-    """One number per pair of places, the same for both directions."""
-    low, high = np.minimum(pairs[:, 0], pairs[:, 1]), np.maximum(pairs[:, 0], pairs[:, 1])
-    key: IntArray = low * np.int64(count + 1) + high
-    return key
 
 
 def _has_steps(value: FloatArray, edges: IntArray, settings: RadiusSettings) -> bool:
@@ -173,38 +113,11 @@ def _has_steps(value: FloatArray, edges: IntArray, settings: RadiusSettings) -> 
     return bool((step > min(np.log(settings.spike_ratio), -np.log(max(settings.end_ratio, 1e-6)))).any())
 
 
-def _profile(raw_points: FloatArray, raw_of_place: IntArray, value: FloatArray, edges: IntArray) -> _Profile:
-    """Chains of places with ln r and arc length along them."""
-    place, offsets = _in_order(chains(len(value), edges), _keys(edges, len(value)))
-    first, last = offsets[:-1], offsets[1:] - 1
-    inner = np.ones(len(place), np.bool_)
-    inner[first] = inner[last] = False
-    is_open = degrees(len(value), edges) == 1
-    open_start, open_end = is_open[place[first]], is_open[place[last]]
-    chain = np.repeat(np.arange(len(first)), np.diff(offsets))
-    points = raw_points.take(raw_of_place[place], axis=0)
-    along = arc_length(points, offsets)
-    return _Profile(place, offsets, points, value[place], along, chain, inner, open_start, open_end)
-
-
-def _in_order(cut: Chains, key: IntArray) -> tuple[IntArray, IntArray]:
-    """Places along chains, and offsets, in an order and direction that the order of the lines leaves no trace in."""
-    first, last = cut.offsets[:-1], cut.offsets[1:] - 1
-    start, end = key[cut.edge[cut.edge_offsets[:-1]]], key[cut.edge[cut.edge_offsets[1:] - 1]]
-    turned = (start > end) | ((last == first + 1) & (cut.point[first] > cut.point[last]))
-    order = np.argsort(np.minimum(start, end))
-    count = np.diff(cut.offsets)[order]
-    offsets = np.concatenate(([0], np.cumsum(count)))
-    way = np.where(turned[order], -1, 1)
-    row = np.where(turned, last, first)[order] - way * offsets[:-1]
-    return cut.point[np.repeat(row, count) + np.repeat(way, count) * np.arange(offsets[-1])], offsets
-
-
 _NOTHING, _IMPOSSIBLE, _SPIKE, _DECAY = range(4)
 _WORDS = {_IMPOSSIBLE: "impossible radius", _SPIKE: "radius spike", _DECAY: "decayed end"}
 
 
-def _kinds(profile: _Profile, settings: RadiusSettings) -> IntArray:
+def _kinds(profile: Profile, settings: RadiusSettings) -> IntArray:
     """What is wrong at each row, 0 where nothing is."""
     kinds = np.where(np.isnan(profile.log_radius), _IMPOSSIBLE, _NOTHING)
     if settings.end_ratio > 0:
@@ -213,18 +126,24 @@ def _kinds(profile: _Profile, settings: RadiusSettings) -> IntArray:
     return kinds
 
 
-def _spikes(profile: _Profile, limit: float) -> BoolArray:
-    """Rows whose ln r lies far from the median around them, no more than two side by side."""
+def _spikes(profile: Profile, limit: float) -> BoolArray:
+    """Rows whose ln r lies far from the median around them, no more than a radius of them side by side."""
     log_radius = profile.log_radius
     steep = np.zeros(len(log_radius), np.bool_)
     with np.errstate(invalid="ignore"):
         step = np.abs(np.diff(log_radius)) > 0.5 * limit
     steep[1:] |= step
     steep[:-1] |= step
-    rows = np.flatnonzero(steep & profile.inner & ~np.isnan(log_radius))
-    around = rows[:, None] + np.arange(-_HALF_WINDOW, _HALF_WINDOW + 1)
-    inside = np.clip(around, 0, len(log_radius) - 1)
-    usable = (inside == around) & (profile.chain[inside] == profile.chain[rows][:, None]) & profile.inner[inside]
+    own = ~profile.at_junction
+    rows = np.flatnonzero(steep & own & ~np.isnan(log_radius))
+    # near the ends of a vessel the window is moved, not cut, so that a spike there is seen against as many points
+    first = profile.offsets[:-1] + profile.at_junction[profile.offsets[:-1]]
+    last = profile.offsets[1:] - 1 - profile.at_junction[profile.offsets[1:] - 1]
+    chain = profile.chain[rows]
+    start = np.clip(rows - _HALF_WINDOW, first[chain], np.maximum(last[chain] - 2 * _HALF_WINDOW, first[chain]))
+    inside = start[:, None] + np.arange(2 * _HALF_WINDOW + 1)
+    usable = inside <= last[chain, None]
+    inside = np.minimum(inside, len(log_radius) - 1)
     window = np.where(usable, log_radius[inside], np.nan)
     enough = np.count_nonzero(~np.isnan(window), axis=1) >= 4
     rows, window = rows[enough], window[enough]
@@ -233,20 +152,25 @@ def _spikes(profile: _Profile, limit: float) -> BoolArray:
     far = np.abs(log_radius[rows] - middle) > np.maximum(limit, 5 * 1.4826 * spread)
     found = np.zeros(len(log_radius), np.bool_)
     found[rows[far]] = True
-    return _short_runs(found, profile.chain)
+    return _short_runs(found, profile)
 
 
-def _short_runs(found: BoolArray, chain: IntArray) -> BoolArray:
+def _short_runs(found: BoolArray, profile: Profile) -> BoolArray:
     """Drop what stands longer side by side than a spike: it may be a vessel."""
+    chain = profile.chain
     starts = found & ~np.concatenate(([False], found[:-1] & (chain[1:] == chain[:-1])))
     number = np.cumsum(starts) - 1
-    length = np.bincount(number[found], minlength=max(int(number.max(initial=-1)) + 1, 0))
+    ends = found & ~np.concatenate((found[1:] & (chain[1:] == chain[:-1]), [False]))
+    first, last = np.flatnonzero(starts), np.flatnonzero(ends)
+    before, after = np.maximum(first - 1, 0), np.minimum(last + 1, len(found) - 1)
+    around = np.exp(np.fmax(profile.log_radius[before], profile.log_radius[after]))
+    short = (last - first < _LONGEST_SPIKE) | (profile.along[last] - profile.along[first] <= _SPIKE_RADII * around)
     kept = found.copy()
-    kept[found] = length[number[found]] <= _LONGEST_SPIKE
+    kept[found] = short[number[found]]
     return kept
 
 
-def _decays(profile: _Profile, limit: float) -> BoolArray:
+def _decays(profile: Profile, limit: float) -> BoolArray:
     """Rows at open ends that lie below the radius further in, from the end inwards."""
     found = np.zeros(len(profile.log_radius), np.bool_)
     first, last = profile.offsets[:-1], profile.offsets[1:] - 1
@@ -258,7 +182,8 @@ def _decays(profile: _Profile, limit: float) -> BoolArray:
         near = profile.log_radius[row]
         near[step >= count[chain, None]] = np.nan
         level = _row_medians(near[:, _LONGEST_DECAY:])
-        low = near[:, :_LONGEST_DECAY] < (level - limit)[:, None]
+        tip = near[:, :_LONGEST_DECAY]
+        low = np.isnan(tip) | (tip < (level - limit)[:, None])  # a radius of zero at the tip is a part of the decay
         found[row[:, :_LONGEST_DECAY][np.logical_and.accumulate(low, axis=1)]] = True
     return found
 
@@ -272,10 +197,13 @@ def _row_medians(values: FloatArray) -> FloatArray:
     return middle
 
 
-def _fitted(profile: _Profile, wrong: BoolArray) -> FloatArray:
+def _fitted(profile: Profile, wrong: BoolArray) -> FloatArray:
     """Ln r at wrong rows from the good rows of their chain, linear in arc length; NaN elsewhere and where there is none."""
-    rows, good = np.flatnonzero(wrong), np.flatnonzero(~wrong)
+    rows, good = np.flatnonzero(wrong), np.flatnonzero(~wrong & ~profile.at_junction)
     value = np.full(len(wrong), np.nan)
+    bare = np.ones(profile.chain[-1] + 1 if len(wrong) else 0, np.bool_)  # chains with good radii at junctions alone
+    bare[profile.chain[good]] = False
+    good = np.flatnonzero(~wrong & (~profile.at_junction | bare[profile.chain]))
     if len(rows) == 0 or len(good) == 0:
         return value
     above = np.searchsorted(good, rows)
@@ -293,7 +221,7 @@ def _fitted(profile: _Profile, wrong: BoolArray) -> FloatArray:
 
 def _records(
     centrelines: Centrelines,
-    profile: _Profile,
+    profile: Profile,
     found: tuple[IntArray, FloatArray],
     raw_of_place: IntArray,
     verdicts: Verdicts,
@@ -318,7 +246,7 @@ def _records(
 
 
 def _record(
-    profile: _Profile,
+    profile: Profile,
     what: tuple[str, int, IntArray],
     fitted: FloatArray,
     verdicts: Verdicts,
@@ -358,7 +286,7 @@ def _conductance(along: FloatArray, log_radius: FloatArray) -> float:
 
 
 def _with_radii(
-    centrelines: Centrelines, profile: _Profile, found: tuple[FloatArray, BoolArray], places: tuple[IntArray, IntArray]
+    centrelines: Centrelines, profile: Profile, found: tuple[FloatArray, BoolArray], places: tuple[IntArray, IntArray]
 ) -> Centrelines:
     """The centrelines with the mended radii in all points of each place; a place on several chains takes their mean."""
     (fitted, mended), (used, label) = found, places
@@ -370,10 +298,20 @@ def _with_radii(
     changed = number[label] > 0
     radius[used[changed]] = np.exp(mean[label[changed]])
     basis[used[changed]] = Basis.INTERPOLATED
-    # a place with one good statement keeps it for those of its points that state none
+    # copies of a place that state none take the radius of the next point of their line, or that of the other copies
     stated = radius[used]
-    value = _log_radius(stated, label, count)[label]
-    lost = ~_is_good(stated) & ~changed & ~np.isnan(value)
-    radius[used[lost]] = np.exp(value[lost])
+    value = log_radii(stated, label, count)[label]
+    lost = ~is_good(stated) & ~changed & ~np.isnan(value)
+    beside = radius[_next_on_line(centrelines)[used[lost]]]
+    radius[used[lost]] = np.where(is_good(beside), beside, np.exp(value[lost]))
     basis[used[lost]] = Basis.INTERPOLATED
     return replace(centrelines, radius=radius, radius_basis=basis)
+
+
+def _next_on_line(centrelines: Centrelines) -> IntArray:
+    """For each raw point at the end of a line the point beside it; itself elsewhere."""
+    beside = np.arange(centrelines.n_points)
+    first, last = centrelines.offsets[:-1], centrelines.offsets[1:] - 1
+    beside[centrelines.connectivity[first]] = centrelines.connectivity[first + 1]
+    beside[centrelines.connectivity[last]] = centrelines.connectivity[last - 1]
+    return beside

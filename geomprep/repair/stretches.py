@@ -16,6 +16,8 @@ _WINDOW = 1.0
 """Radii on both sides over which the distance to another run is averaged."""
 _WEAK = 3.0
 """A stretch goes on while single samples stay within this many limits."""
+_OF_LENGTH = 0.4
+"""Largest distance of a copy in parts of its length."""
 _CLOSE_PART = 0.4
 """Part of a stretch that must be close on average; lines that only cross stay below one third."""
 _GAP, _INSIDE = 6.0, 0.75
@@ -223,6 +225,8 @@ def _is_copy(
     exempt = (at_start and at_end) or (at_start and open_ends[0]) or (at_end and open_ends[1])
     if length <= 0 or (length < limits.overlap and not exempt):
         return False
+    if beside.distance[first : last + 1].max() > _OF_LENGTH * length:
+        return False  # a short piece between two places on other lines, which nothing runs along
     if run.along[inner[-1]] - run.along[inner[0]] < _CLOSE_PART * length:
         return False
     # the places beside a copy move along with it; those beside a stub at the end of a vessel do not

@@ -228,3 +228,14 @@ def test_vein_that_overlaps_its_continuation_by_one_radius_joins_it(lines: Lines
     result = join(lines([one, other], 1.0, classes=[2, 2]))
     assert junction_degrees(result.graph) == {1: 2}
     assert [repair.kind for repair in result.repairs] == ["T-joint"]
+
+
+@pytest.mark.parametrize("apart", [0.25, 0.5, 1.0])
+def test_a_short_piece_between_two_forks_is_no_copy_of_itself(lines: Lines, apart: float) -> None:
+    """Two branches that leave a trunk close to one another: what lies between them stays, and all hangs together."""
+    trunk = np.linspace(0, 30, 121)[:, None] * [0, 0, 1.0]
+    forks = ((15.0, 1.0), (15.0 + apart, -1.0))
+    branches = [np.array([0, 0, z]) + np.linspace(0, 9, 19)[:, None] * [x, 0, 0.5] for z, x in forks]
+    graph = join(lines([trunk, *branches], 1.0)).graph
+    assert junction_degrees(graph) == {1: 4, 3: 2}
+    assert nx.is_connected(nx.Graph(graph.edges.tolist()))

@@ -134,3 +134,29 @@ def test_five_percent_outliers_cost_less_than_two_percent_of_resistance(seed: in
 def test_settings_out_of_range(changes: dict[str, float]) -> None:
     with pytest.raises(InputError, match=r"repair\.radius"):
         RadiusSettings(**changes)
+
+
+@pytest.mark.parametrize("nothing", [0.0, np.nan])
+def test_a_decay_that_ends_in_no_radius_at_all_is_a_decay(nothing: float) -> None:
+    """A distance map falls to zero at the end of a skeleton: the points before it are as wrong as the last one."""
+    radius = np.full(N, 2.0)
+    radius[:3] = [nothing, 0.5, 1.1]  # all below 0.6 of what is further in
+    result = mended(radius)
+    np.testing.assert_allclose(result.centrelines.radius * 1e3, 2.0, rtol=1e-12)
+
+
+def test_a_spike_at_an_open_end_is_one() -> None:
+    radius = np.full(N, 2.0)
+    radius[-1] = 6.0
+    result = mended(radius)
+    np.testing.assert_allclose(result.centrelines.radius * 1e3, 2.0, rtol=1e-12)
+    assert [repair.kind for repair in result.repairs] == ["radius spike"]
+
+
+@pytest.mark.parametrize(("spacing", "goes"), [(0.9, True), (2.0, False)])
+def test_a_run_of_three_is_a_spike_only_within_a_radius(spacing: float, goes: bool) -> None:
+    """Three points of a third of the radius: within 1.8 mm of a vessel of 2 mm no lumen narrows so; over 4 mm it may."""
+    radius = np.full(N, 2.0)
+    radius[20:23] = 0.7
+    result = mend_radii(line(radius, spacing), RadiusSettings(), Verdicts())
+    assert bool(result.repairs) is goes
