@@ -4,15 +4,18 @@ from geomprep.measure.cross_sections import cross_sections
 from geomprep.measure.curves import curvature, tortuosity
 from geomprep.measure.junction_zones import junction_zones
 from geomprep.measure.junctions import junctions
+from geomprep.measure.mask_areas import VoxelGrid, mask_areas
 from geomprep.measure.narrowings import narrowings
 from geomprep.measure.profiles import radius_profiles
 from geomprep.measure.segments import measure_segments
 
 __all__ = [
+    "VoxelGrid",
     "cross_sections",
     "curvature",
     "junction_zones",
     "junctions",
+    "mask_areas",
     "measure_segments",
     "narrowings",
     "radius_profiles",
