@@ -134,6 +134,7 @@ def _spikes(profile: Profile, limit: float) -> BoolArray:
         step = np.abs(np.diff(log_radius)) > 0.5 * limit
     steep[1:] |= step
     steep[:-1] |= step
+    steep[1:-1] |= steep[2:] & steep[:-2]  # between two steps lies the middle of a run of three
     own = ~profile.at_junction
     rows = np.flatnonzero(steep & own & ~np.isnan(log_radius))
     # near the ends of a vessel the window is moved, not cut, so that a spike there is seen against as many points
