@@ -4,6 +4,7 @@ from geomprep.files.contained import ReadLimits
 from geomprep.files.contents import FileContents
 from geomprep.files.formats import FORMATS, Format, format_of
 from geomprep.files.reading import Reading, read_file, read_files, start_reading
+from geomprep.files.surfaces import SurfaceContents, read_surface
 from geomprep.files.writing import write_lines
 
 __all__ = [
@@ -12,9 +13,11 @@ __all__ = [
     "Format",
     "ReadLimits",
     "Reading",
+    "SurfaceContents",
     "format_of",
     "read_file",
     "read_files",
+    "read_surface",
     "start_reading",
     "write_lines",
 ]
