@@ -9,7 +9,6 @@ from typing import Any
 
 import numpy as np
 import numpy.typing as npt
-from scipy.spatial import cKDTree
 
 from geomprep.anatomy import NamedPoint, name_segments, read_names
 from geomprep.assign import Ends, coordinates, resolve_ends
@@ -156,15 +155,22 @@ def _joined(
     centrelines, findings = _centrelines(case, contents)
     del contents
     progress("join", 0.3)
-    mended = mend_radii(centrelines, rules.settings["radius"], rules.verdicts)
+    centrelines, radius_repairs = _mended(centrelines, rules)
+    joined = join(centrelines, rules.settings["join"], rules.verdicts)
     del centrelines
-    joined = join(mended.centrelines, rules.settings["join"], rules.verdicts)
     progress("repair", 0.45)
     # those of joining first: raw points that it dropped name its repairs by their number
-    before = (*joined.repairs, *mended.repairs)
+    before, seen = (*joined.repairs, *radius_repairs), joined.findings
     graph = replace(joined.graph, protected=joined.graph.protected | _named_points(case, joined.graph.points))
+    del joined
     whole = mend_graph(graph, rules.settings, Given(rules.verdicts, _voxel(case)), before)
-    return replace(whole, findings=(*joined.findings, *whole.findings)), records, findings
+    return replace(whole, findings=(*seen, *whole.findings)), records, findings
+
+
+def _mended(centrelines: Centrelines, rules: RepairRules) -> tuple[Centrelines, tuple[Repair, ...]]:
+    """Centrelines with their radii mended, and the record of it."""
+    mended = mend_radii(centrelines, rules.settings["radius"], rules.verdicts)
+    return mended.centrelines, mended.repairs
 
 
 def _voxel(case: Case) -> float | None:
@@ -221,8 +227,8 @@ def _named_points(case: Case, points: FloatArray) -> BoolArray:
     at = [end.at for end in case.inlets] + [end.at for end in case.outlets]
     places += [tuple(place.tolist()) for text in at if (place := coordinates(text, factor)) is not None]
     named = np.zeros(len(points), np.bool_)
-    if places:
-        named[cKDTree(points).query(np.array(places))[1]] = True
+    for place in places:
+        named[np.argmin(((points - np.array(place)) ** 2).sum(axis=1))] = True
     return named
 
 

@@ -45,7 +45,7 @@ class Branches:
     def of(cls, graph: PointGraph) -> Branches:
         """Cut a graph and measure its chains."""
         cut = chains(graph.n_points, graph.edges)
-        along = arc_length(graph.points[cut.point], cut.offsets)
+        along = arc_length(graph.points.take(cut.point, axis=0), cut.offsets)
         first, last = cut.offsets[:-1], cut.offsets[1:] - 1
         chain = np.repeat(np.arange(cut.n_chains), np.diff(cut.offsets))
         ends = np.stack((cut.point[first], cut.point[last]), axis=1)

@@ -76,7 +76,7 @@ def collapse_cliques(graph: PointGraph, settings: CliqueSettings, given: Given) 
     """
     if not settings.use:
         return StepResult(graph)
-    branches = Branches.of(graph)
+    branches = given.branches(graph)
     knots = _knots(branches, settings)
     count = len(knots.width)
     if count == 0:

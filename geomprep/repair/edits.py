@@ -9,7 +9,7 @@ import numpy as np
 
 from geomprep.model import Basis, BoolArray, FloatArray, IntArray, PointGraph, degrees, raw_order
 
-__all__ = ["renumbered", "with_doubled_point", "with_edges", "with_merged_points", "with_points", "without_edges"]
+__all__ = ["renumbered", "with_doubled_points", "with_edges", "with_merged_points", "with_points", "without_edges"]
 
 _POINT_FIELDS = ("points", "radius", "radius_basis", "vessel_class", "input_id", "protected", "source_point")
 
@@ -124,26 +124,26 @@ def with_edges(graph: PointGraph, edges: IntArray, own: tuple[IntArray, IntArray
     )
 
 
-def with_doubled_point(graph: PointGraph, point: int, edges: IntArray, radius: FloatArray) -> PointGraph:
-    """Give some of the edges at a point a point of their own at the same place.
+def with_doubled_points(graph: PointGraph, point: IntArray, edges: IntArray, radius: FloatArray) -> PointGraph:
+    """Give some of the edges at each of several points a point of their own at the same place.
 
     Parameters
     ----------
     graph : PointGraph
-    point : int
-        Raw points stay with this one.
-    edges : (k,) int array
+    point : (k,) int array
+        Raw points stay with these.
+    edges : (k, m) int array
         Edges that get the new point.
-    radius : (2,) float array
-        Interpolated radius of the old and of the new point.
+    radius : (k, 2) float array
+        Interpolated radius of each old and each new point.
     """
-    new = graph.n_points
-    fields = {name: getattr(graph, name) for name in _POINT_FIELDS}
-    fields = {name: np.concatenate((values, values[point : point + 1])) for name, values in fields.items()}
-    fields["radius"][[point, new]] = radius
-    fields["radius_basis"][[point, new]] = Basis.INTERPOLATED
+    new = graph.n_points + np.arange(len(point))
+    fields = {name: np.concatenate((getattr(graph, name), getattr(graph, name)[point])) for name in _POINT_FIELDS}
+    fields["radius"][point], fields["radius"][new] = radius.T
+    fields["radius_basis"][point] = fields["radius_basis"][new] = Basis.INTERPOLATED
     moved = graph.edges.copy()
-    moved[edges] = np.where(moved[edges] == point, new, moved[edges])
+    for old, added, rows in zip(point.tolist(), new.tolist(), edges, strict=True):
+        moved[rows] = np.where(moved[rows] == old, added, moved[rows])
     return replace(graph, **fields, edges=moved)
 
 

@@ -9,7 +9,6 @@ import numpy as np
 from geomprep.errors import InputError
 from geomprep.findings import Finding, Severity
 from geomprep.model import Basis, PointGraph
-from geomprep.repair.branches import Branches
 from geomprep.repair.steps import Given, StepResult
 
 __all__ = ["FloorSettings", "report_floor"]
@@ -67,7 +66,7 @@ def report_floor(graph: PointGraph, settings: FloorSettings, given: Given) -> St
     value, share = float(starts[number]), float(counts[number]) / len(stated)
     if share < settings.share_above or value > limit:
         return StepResult(graph)
-    branches = Branches.of(graph)
+    branches = given.branches(graph)
     radius = graph.radius[branches.cut.point]
     vessels = np.unique(branches.chain[(radius >= value) & (radius <= _ALIKE * value)])
     if len(vessels) < _VESSELS or len(vessels) == branches.cut.n_chains:

@@ -104,7 +104,7 @@ def close_gaps(graph: PointGraph, settings: GapSettings, given: Given) -> StepRe
     """
     if not settings.use:
         return StepResult(graph)
-    branches = Branches.of(graph)
+    branches = given.branches(graph)
     found = tips(branches)
     links = _candidates(branches, found, settings)
     if len(links.tip) == 0:

@@ -95,7 +95,7 @@ def _round(
     graph: PointGraph, settings: HoleSettings, given: Given, number: int, seen: set[str]
 ) -> tuple[PointGraph, list[Repair]]:
     """Fill one pair of arms between each two junctions."""
-    branches = Branches.of(graph)
+    branches = given.branches(graph)
     pairs = _pairs(branches, settings)
     if len(pairs.apart) == 0:
         return graph, []

@@ -71,7 +71,7 @@ def drop_copies(graph: PointGraph, settings: CopySettings, given: Given) -> Step
     """
     if not settings.use:
         return StepResult(graph)
-    branches = Branches.of(graph)
+    branches = given.branches(graph)
     chosen = _alone(branches)
     if len(chosen) == 0:
         return StepResult(graph)

@@ -10,7 +10,7 @@ from geomprep.errors import InputError
 from geomprep.model import BoolArray, FloatArray, IntArray, PointGraph, Repair, anchor_ids
 from geomprep.repair.branches import Branches
 from geomprep.repair.contacts import Contacts, link_contacts, shared_contacts
-from geomprep.repair.edits import with_doubled_point, without_edges
+from geomprep.repair.edits import with_doubled_points, without_edges
 from geomprep.repair.steps import Given, StepResult
 
 __all__ = ["KissingSettings", "part_kissing"]
@@ -78,7 +78,7 @@ def part_kissing(graph: PointGraph, settings: KissingSettings, given: Given) -> 
     """
     if not settings.use:
         return StepResult(graph)
-    branches = Branches.of(graph)
+    branches = given.branches(graph)
     repairs: list[Repair] = []
     dropped_by = np.full(graph.n_edges, -1, np.int64)
     doubled: list[tuple[int, IntArray, FloatArray]] = []
@@ -95,8 +95,9 @@ def part_kissing(graph: PointGraph, settings: KissingSettings, given: Given) -> 
             elif verdict.choice != LEAVE:
                 doubled.append(_second_vessel(branches, found, row, verdict.choice))
             repairs.append(_record(branches, found, row, (key, verdict.choice, verdict.by, options)))
-    for point, edges, radius in doubled:
-        graph = with_doubled_point(graph, point, edges, radius)
+    if doubled:
+        point, edges, radius = (np.array(column) for column in zip(*doubled, strict=True))
+        graph = with_doubled_points(graph, point, edges, radius)
     return StepResult(without_edges(graph, dropped_by), tuple(repairs))
 
 

@@ -65,40 +65,36 @@ def name_loops(graph: PointGraph, settings: LoopSettings, given: Given) -> StepR
     loops = graph.n_edges - graph.n_points + parts
     if loops <= 0:
         return StepResult(graph)
-    branches = Branches.of(graph)
-    first, second = _arms(branches)
-    longer = np.maximum(branches.length[first], branches.length[second])
-    order = np.argsort(-longer, kind="stable")
-    found = [_arm_finding(branches, int(first[row]), int(second[row]), settings) for row in order[:_LISTED].tolist()]
-    rest = loops - len(found)
-    return StepResult(graph, (), (*found, *_rest_finding(loops, rest)))
+    branches = given.branches(graph)
+    arms = _arms(branches)
+    listed = arms[np.argsort(-branches.length[arms].max(axis=1), kind="stable")[:_LISTED]]
+    found = _arm_findings(branches, listed, settings)
+    return StepResult(graph, (), (*found, *_rest_finding(loops, loops - len(found))))
 
 
-def _arms(branches: Branches) -> tuple[IntArray, IntArray]:
-    """Pairs of chains between the same two junctions, neighbours in length."""
+def _arms(branches: Branches) -> IntArray:
+    """Pairs of chains between the same two junctions, neighbours in length, (p, 2)."""
     low, high = branches.ends.min(axis=1), branches.ends.max(axis=1)
     order = np.lexsort((branches.length, high, low))
     same = (low[order][1:] == low[order][:-1]) & (high[order][1:] == high[order][:-1]) & (low != high)[order][1:]
-    return order[:-1][same], order[1:][same]
+    return np.stack((order[:-1][same], order[1:][same]), axis=1)
 
 
-def _arm_finding(branches: Branches, first: int, second: int, settings: LoopSettings) -> Finding:
-    """Two arms between the same two junctions."""
-    length = branches.length[[first, second]]
-    name = "fenestration" if length.max() <= settings.fenestration_below else "duplication"
-    side = np.zeros(2, np.int64)
-    middle = branches.at(np.array([first, second]), side, 0.5 * length, branches.graph.points)
-    size = branches.at(np.array([first, second]), side, 0.5 * length, branches.graph.radius)
-    x, y, z = middle.mean(axis=0).tolist()
-    return Finding(
-        "loop",
-        Severity.NOTE,
-        f"two arms of {1e3 * length[0]:.3g} and {1e3 * length[1]:.3g} mm, radii {1e3 * size[0]:.3g} and "
-        f"{1e3 * size[1]:.3g} mm, leave and meet again: kept as a {name}",
-        position=(x, y, z),
-        value=float(length.max()),
-        unit="m",
-    )
+def _arm_findings(branches: Branches, arms: IntArray, settings: LoopSettings) -> list[Finding]:
+    """One finding for each two arms between the same two junctions."""
+    length = branches.length[arms]
+    chain, half = arms.ravel(), 0.5 * length.ravel()
+    middle = branches.at(chain, np.zeros_like(chain), half, branches.graph.points).reshape(-1, 2, 3).mean(axis=1)
+    size = branches.at(chain, np.zeros_like(chain), half, branches.graph.radius).reshape(-1, 2)
+    found = []
+    for (one, other), (thick, thin), place in zip(length.tolist(), size.tolist(), middle.tolist(), strict=True):
+        name = "fenestration" if max(one, other) <= settings.fenestration_below else "duplication"
+        message = (
+            f"two arms of {1e3 * one:.3g} and {1e3 * other:.3g} mm, radii {1e3 * thick:.3g} and {1e3 * thin:.3g} mm, "
+            f"leave and meet again: kept as a {name}"
+        )
+        found.append(Finding("loop", Severity.NOTE, message, position=tuple(place), value=max(one, other), unit="m"))
+    return found
 
 
 def _rest_finding(loops: int, rest: int) -> tuple[Finding, ...]:

@@ -125,7 +125,10 @@ def end_links(graph: PointGraph, found: Tips, longest: float) -> Links:
     longest : float
         Longest gap in mean radii.
     """
-    pairs = _near(graph.points[found.point], found.radius, graph.points[found.point], found.radius, longest)
+    # the mean of two radii may be larger than that of the end looked from, by half of the other at most
+    pairs = _near(
+        graph.points[found.point], 0.5 * found.radius, graph.points[found.point], 0.5 * longest * found.radius, longest
+    )
     a, b = pairs[:, 0], pairs[:, 1]
     first = graph.points[found.point]
     size = 0.5 * (found.radius[a] + found.radius[b])
@@ -214,17 +217,26 @@ def _own_stretch(branches: Branches, found: Tips, tip: IntArray, point: IntArray
 
 
 def _near(places: FloatArray, size: FloatArray, others: FloatArray, other_size: FloatArray, longest: float) -> IntArray:
-    """Pairs (place, other) that may lie within so many radii, searched by octaves of size."""
-    if len(places) == 0 or len(others) == 0:
-        return np.empty((0, 2), np.int64)
+    """Pairs (place, other) no farther apart than `longest` sizes and the other's size, searched by octaves of both."""
+    found = [np.empty((0, 2), np.int64)]
+    trees = [(there, KDTree(others[there])) for there in _octaves(other_size)]
+    for which in _octaves(size):
+        here = KDTree(places[which])
+        for there, tree in trees:
+            reach = longest * float(size[which].max()) + float(other_size[there].max())
+            pairs = here.sparse_distance_matrix(tree, reach, output_type="ndarray")
+            i, j = which[pairs["i"]], there[pairs["j"]]
+            close = pairs["v"] <= (1.0 + 1e-9) * (longest * size[i] + other_size[j])
+            found.append(np.stack((i[close], j[close]), axis=1))
+    return np.concatenate(found)
+
+
+def _octaves(size: FloatArray) -> list[IntArray]:
+    """Rows of similar size, from small to large."""
+    if len(size) == 0:
+        return []
     octave = np.floor(np.log2(size / size.min())).astype(np.int64)
-    tree, found = KDTree(others), []
-    for number in np.unique(octave):
-        which = np.flatnonzero(octave == number)
-        reach = longest * float(size[which].max()) + float(other_size.max())
-        pairs = KDTree(places[which]).sparse_distance_matrix(tree, reach, output_type="ndarray")
-        found.append(np.stack((which[pairs["i"]], pairs["j"]), axis=1))
-    return np.concatenate(found).astype(np.int64)
+    return [np.flatnonzero(octave == number) for number in np.unique(octave)]
 
 
 def _angle(one: FloatArray, other: FloatArray) -> FloatArray:

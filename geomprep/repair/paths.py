@@ -77,7 +77,7 @@ def smooth_paths(graph: PointGraph, settings: PathSettings, given: Given) -> Ste
     doi:10.1214/ss/1038425655. Choice of the penalty at known noise by the unbiased risk estimate of Mallows 1973,
     doi:10.1080/00401706.1973.10489103. Repeated averaging would shrink curved vessels.
     """
-    branches = Branches.of(graph)
+    branches = given.branches(graph)
     noise = settings.positional_noise
     if not noise:
         return StepResult(graph, (), _jagged_finding(branches))

@@ -94,7 +94,7 @@ def _round(
     graph: PointGraph, settings: SpurSettings, given: Given, number: int, declined: set[str]
 ) -> tuple[IntArray, list[Repair]]:
     """Drop the shortest spur at each junction; (repair of each edge or −1, repairs)."""
-    branches = Branches.of(graph)
+    branches = given.branches(graph)
     found = _candidates(branches, settings, given)
     tip = branches.ends[found.chain, found.side]
     base = branches.ends[found.chain, 1 - found.side]

@@ -8,6 +8,7 @@ from typing import Any
 
 from geomprep.findings import Finding
 from geomprep.model import PointGraph, Repair
+from geomprep.repair.branches import Branches
 from geomprep.repair.edits import renumbered
 from geomprep.repair.verdicts import Verdicts
 
@@ -28,6 +29,13 @@ class Given:
 
     verdicts: Verdicts = field(default_factory=Verdicts)
     voxel: float | None = None
+    _laid: list[Branches] = field(default_factory=list, repr=False, compare=False)
+
+    def branches(self, graph: PointGraph) -> Branches:
+        """Return the branches of a graph; those of the last graph asked for are kept, as most steps change nothing."""
+        if not (self._laid and self._laid[0].graph is graph):
+            self._laid[:] = [Branches.of(graph)]
+        return self._laid[0]
 
 
 @dataclass(frozen=True, eq=False)
