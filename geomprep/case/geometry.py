@@ -227,8 +227,8 @@ def _named_points(case: Case, points: FloatArray) -> BoolArray:
     at = [end.at for end in case.inlets] + [end.at for end in case.outlets]
     places += [tuple(place.tolist()) for text in at if (place := coordinates(text, factor)) is not None]
     named = np.zeros(len(points), np.bool_)
-    for place in places:
-        named[np.argmin(((points - np.array(place)) ** 2).sum(axis=1))] = True
+    for spot in places:
+        named[np.argmin(((points - np.array(spot)) ** 2).sum(axis=1))] = True
     return named
 
 
