@@ -16,7 +16,7 @@ from geomprep.files.contained import Child, Parsed, ReadLimits, _anonymous_file
 from geomprep.files.layout import Layout
 from geomprep.files.reading import _bytes, _shown, _stamp
 
-__all__ = ["ShapeFormat", "parsed_shape"]
+__all__ = ["ImageLayout", "ShapeFormat", "parsed_shape"]
 
 
 @dataclass(frozen=True)
@@ -36,6 +36,25 @@ class ShapeFormat:
     suffix: str
     library: str
     layout: Callable[[str, bytes], Layout]
+
+
+@dataclass(frozen=True)
+class ImageLayout(Layout):
+    """What the header of an image declares.
+
+    Attributes
+    ----------
+    shape : (int, int, int)
+        Points along each axis; cells are one fewer.
+    length_unit : str
+        Unit of coordinates, empty where the file states none.
+    frame : str
+        Anatomical frame, such as ``RAS``, empty where the file states none.
+    """
+
+    shape: tuple[int, int, int] = (0, 0, 0)
+    length_unit: str = ""
+    frame: str = ""
 
 
 class _ShapeChild(Child):

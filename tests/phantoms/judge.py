@@ -10,7 +10,17 @@ import numpy as np
 from geomprep.model import Centrelines, Network, PointGraph
 from phantoms.truth import Truth, piece_resistance
 
-__all__ = ["Comparison", "Match", "Shape", "compare", "matched", "outlet_resistances", "resistance_errors", "shape_of"]
+__all__ = [
+    "Comparison",
+    "Match",
+    "Shape",
+    "comparable",
+    "compare",
+    "matched",
+    "outlet_resistances",
+    "resistance_errors",
+    "shape_of",
+]
 
 
 @dataclass(frozen=True, eq=False)
@@ -276,10 +286,20 @@ def compare(truth: Truth, thing: Any, within: float = 2.0, slack: float = 0.0) -
     )
 
 
+def comparable(truth: Truth) -> bool:
+    """Whether no two junctions of a truth lie within a radius of one another."""
+    return not _within_zones(truth).any()
+
+
+def _within_zones(truth: Truth) -> np.ndarray:
+    """(s,) segments between two junctions that are shorter than a radius."""
+    short = truth.lengths < truth.node_radius[truth.segments].max(axis=1)
+    return short & (truth.degree[truth.segments] >= 3).all(axis=1)
+
+
 def _true_junctions(truth: Truth) -> np.ndarray:
     """Junctions of the truth; none lie within a radius of one another."""
-    short = truth.lengths < truth.node_radius[truth.segments].max(axis=1)
-    both = short & (truth.degree[truth.segments] >= 3).all(axis=1)
+    both = _within_zones(truth)
     if both.any():
         raise ValueError(f"segments {np.flatnonzero(both).tolist()} lie within the branching zone: no truth to match")
     return truth.junctions

@@ -10,7 +10,7 @@ import numpy as np
 from geomprep.model import PointGraph, Repair, chains
 from geomprep.repair import Given, RadiusSettings, Verdicts, join, mend_graph, mend_radii
 from phantoms.cases import Case, cases
-from phantoms.judge import compare, resistance_errors, shape_of
+from phantoms.judge import comparable, compare, resistance_errors, shape_of
 from phantoms.lines import drawn
 from phantoms.scores import (
     Score,
@@ -172,6 +172,8 @@ def voxels(kind: str, first: int, n: int, noise: float = 0.35) -> Voxels:
 
     total = Voxels()
     for case in cases(kind, first, n):
+        if not comparable(case.truth):
+            continue
         edge = float(case.voxels.voxel.max())
         graph = mended(case, paths=PathSettings(noise * edge)).graph
         found = compare(case.truth, graph, slack=2 * edge)
