@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import Any
 
 import numpy as np
 
 from geomprep.case.open_ends import OpenEnds, find_open_ends
+from geomprep.case.preview import Preview, preview_repairs
 from geomprep.errors import FileError, InputError, Question
 from geomprep.files import FileContents, read_file
 from geomprep.files.meaning import Gate, gate
@@ -55,6 +56,8 @@ class Inspection:
         What a case has to state about this file.
     findings : tuple of Finding
         What is wrong or odd.
+    preview : Preview
+        What would be repaired if the best reading is the right one.
     """
 
     file: str
@@ -69,6 +72,7 @@ class Inspection:
     gate: Gate | None
     questions: tuple[Question, ...]
     findings: tuple[Finding, ...]
+    preview: Preview = field(default_factory=lambda: Preview("not looked at"))
 
     def to_dict(self) -> dict[str, Any]:
         """Everything as plain numbers, texts, lists and dicts, ready for JSON."""
@@ -88,6 +92,10 @@ class Inspection:
             "readings": [_plain(vars(reading)) for reading in readings],
             "questions": [_plain(vars(question)) for question in self.questions],
             "findings": [_plain(vars(finding)) for finding in self.findings],
+            "repairs": {
+                "read_as": self.preview.read_as,
+                "repairs": [_plain(vars(repair)) for repair in self.preview.repairs],
+            },
         }
 
 
@@ -139,7 +147,8 @@ def inspect(
         raise InputError(f"vessels = '{vessels}': must be arteries or veins")
     contents = read_file(file)
     statement = InputStatement(str(file), vessels=vessels, size_array=size_array, voxel=voxel)
-    return inspection_of(contents, statement)
+    found = inspection_of(contents, statement)
+    return replace(found, preview=preview_repairs(contents, statement, found.gate))
 
 
 def inspection_of(contents: FileContents, statement: InputStatement, key: str = "input[0]") -> Inspection:

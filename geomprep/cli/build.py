@@ -7,6 +7,7 @@ from pathlib import Path
 
 from geomprep.case.build import BuildResult, build
 from geomprep.cli.console import Console
+from geomprep.cli.repairs import repair_lines
 from geomprep.findings import Severity, most_severe
 
 __all__ = ["add_arguments", "run"]
@@ -36,6 +37,8 @@ def run(arguments: argparse.Namespace, console: Console) -> int:
     console.end_progress()
     console.detail(*(f"{finding.severity:<8} {finding.message}" for finding in result.findings))
     console.detail(*(f"repair   {repair.id}: {repair.reason} ({repair.choice})" for repair in result.repairs))
+    if arguments.dry_run:
+        console.say("would be repaired", *repair_lines(result.repairs, console.verbose), "")
     console.say(*result.summary)
     console.document(_plain(result))
     return 1 if most_severe(result.findings) is Severity.ERROR else 0

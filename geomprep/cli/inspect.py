@@ -6,6 +6,7 @@ import argparse
 
 from geomprep.case.inspect import Inspection, inspect
 from geomprep.cli.console import Console, table
+from geomprep.cli.repairs import repair_lines
 from geomprep.errors import GeomprepError
 from geomprep.findings import Severity, most_severe
 from geomprep.units import parse_quantity
@@ -64,6 +65,11 @@ def _lines(found: Inspection, verbose: bool) -> list[str]:
     if found.gate:
         lines += ["", *_readings(found, verbose)]
         lines += ["", *_questions(found, verbose)]
+        lines += [
+            "",
+            f"would be repaired, read as {found.preview.read_as}",
+            *repair_lines(found.preview.repairs, verbose),
+        ]
     return lines
 
 

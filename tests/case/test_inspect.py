@@ -1,6 +1,7 @@
 """What inspect sees in a file, and the first look at its open ends."""
 
 import json
+from collections import Counter
 from pathlib import Path
 
 import numpy as np
@@ -99,3 +100,21 @@ def test_bad_arguments():
         inspect(SAMPLES / "limb" / "arteries.vtk", vessels="nerves")
     with pytest.raises(CaseError, match="no such array"):
         inspect(SAMPLES / "limb" / "arteries.vtk", size_array="girth")
+
+
+def test_what_would_be_repaired_is_listed_without_a_case() -> None:
+    """The rough sample holds 4 gaps, 4 spurs, 2 copies and 5 runs of bad radii; read as veins, gaps and copies are asked."""
+    found = inspect(SAMPLES / "neck-veins-rough" / "veins.vtp", vessels="veins")
+    kinds = Counter((repair.kind, repair.verdict_by) for repair in found.preview.repairs)
+    assert kinds == {
+        ("gap", "open"): 4,
+        ("overlapping veins", "open"): 1,
+        ("copy of a vessel", "open"): 1,
+        ("spur", "rule"): 4,
+        ("impossible radius", "rule"): 3,
+        ("radius spike", "rule"): 2,
+    }
+    assert "in mm" in found.preview.read_as
+    listed = found.to_dict()["repairs"]
+    assert len(listed["repairs"]) == 15
+    assert listed["repairs"][0]["options"]

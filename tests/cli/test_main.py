@@ -142,3 +142,14 @@ def test_strict_refuses_findings_of_severity_error(tmp_path: Path, capsys: pytes
     assert code == 2
     assert "strict" in capsys.readouterr().err
     assert not (tmp_path / "results").exists()
+
+
+def test_dry_run_and_inspect_show_repairs_as_a_table(capsys) -> None:
+    case = SAMPLES / "neck-veins-rough"
+    assert main(["build", str(case / "case.toml"), "--dry-run"]) == 0
+    shown = capsys.readouterr().out
+    assert "would be repaired" in shown
+    assert shown.count("two open ends lie") == 4
+    assert main(["inspect", str(case / "veins.vtp"), "--vessels", "veins"]) == 1  # sizes of zero are an error
+    shown = capsys.readouterr().out
+    assert shown.count("asked: leave | interpolate") == 4
