@@ -83,11 +83,11 @@ def triangle_friction_shape() -> float:
 def friction_shape(area: npt.ArrayLike, perimeter: npt.ArrayLike, outline: Outline = "elliptic") -> FloatArray:
     r"""Return the friction shape of a measured outline from its area and perimeter.
 
-    Two lines through the compactness C = P²/A, for two families of outlines:
+    From the compactness C = P²/A, or κ = C/(4π), which is 1 for a circle, for two families of outlines:
 
-    - elliptic (veins of the neck, arteries): (8C/3 − 8π/3)/(8π) = (4κ − 1)/3 with κ = C/(4π);
+    - elliptic (veins of the neck, arteries): (8C/3 − 8π/3)/(8π) = (4κ − 1)/3;
     - triangular (dural sinuses): (25C/17 + 40√3/17)/(8π) from the equilateral triangle on; a rounder one lies
-      on the straight line from the circle to it.
+      on the parabola κ − b(κ − 1)² from the circle to it.
 
     Use :func:`friction_shape_from_moment` where the outline is of neither kind or its edge is rough: a stair of
     voxels lengthens the perimeter and hardly moves the second moment.
@@ -112,17 +112,22 @@ def friction_shape(area: npt.ArrayLike, perimeter: npt.ArrayLike, outline: Outli
     Notes
     -----
     Source of both lines: Mortensen, Okkels & Bruus 2005, doi 10.1103/PhysRevE.71.057301 (coefficients from
-    memory; they give the circle and the equilateral triangle exactly). Error against the closed forms:
+    memory; they give the circle and the equilateral triangle exactly). The parabola is ours: a circle with a
+    wave of n periods and small height ε has κ = 1 + (n² − 1)ε²/2 and the shape 1 + 2(n − 1)ε², so that for n = 3 it
+    starts with the slope 1, and it ends in the triangle. Error against the closed forms, and for triangles
+    rounded by a radius (in sides of the inner triangle) against solved velocity fields:
 
-    ========================  ============  ============
-    shape                     elliptic      triangular
-    ========================  ============  ============
-    circle                    0             0
-    ellipse 2:1               +0.1 %        −11 %
-    ellipse 3:1               +0.7 %        −22 %
-    ellipse 5:1               +1.8 %        −31 %
-    equilateral triangle      +36 %         0
-    ========================  ============  ============
+    ==========================  ============  ============  ==================
+    shape                       elliptic      triangular    from the moment
+    ==========================  ============  ============  ==================
+    circle                      0             0             0
+    ellipse 2:1                 +0.1 %        −7 %          0
+    ellipse 3:1                 +0.7 %        −19.5 %       0
+    ellipse 5:1                 +1.8 %        −31 %         0
+    equilateral triangle        +36 %         0             −12 %
+    triangle rounded by 0.1     +14 %         −2 %          −11 %
+    triangle rounded by 0.4     +4 %          −1 %          −6 %
+    ==========================  ============  ============  ==================
 
     Examples
     --------
@@ -135,8 +140,8 @@ def friction_shape(area: npt.ArrayLike, perimeter: npt.ArrayLike, outline: Outli
     if outline == "elliptic":
         relation = compactness / (3 * np.pi) - 1 / 3
     elif outline == "triangular":
-        straight = (compactness - _CIRCLE_COMPACTNESS) / (_TRIANGLE_COMPACTNESS - _CIRCLE_COMPACTNESS)
-        rounded = 1 + (triangle_friction_shape() - 1) * straight
+        beyond, most = compactness / _CIRCLE_COMPACTNESS - 1, _TRIANGLE_COMPACTNESS / _CIRCLE_COMPACTNESS - 1
+        rounded = 1 + beyond - (most + 1 - triangle_friction_shape()) * (beyond / most) ** 2
         sharp = (25 * compactness + 40 * np.sqrt(3)) / (17 * 8 * np.pi)
         relation = np.where(compactness < _TRIANGLE_COMPACTNESS, rounded, sharp)
     else:
