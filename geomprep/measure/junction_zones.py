@@ -6,6 +6,7 @@ it has neither a length nor a resistance of its own.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 from enum import IntEnum
 
@@ -13,6 +14,7 @@ import numpy as np
 
 from geomprep.curves import interpolate, line_sums, piece_integrals, pieces
 from geomprep.errors import InputError
+from geomprep.findings import Finding, Severity
 from geomprep.measure.junction_parents import (
     JunctionKind,
     ParentRule,
@@ -27,7 +29,7 @@ from geomprep.measure.profiles import ProfileSettings, radius_profiles
 from geomprep.measure.tube_overlap import Axes, Ends, exit_distances, overlap_volumes
 from geomprep.model import BoolArray, FloatArray, IntArray, Network, Stations, Uint8Array
 
-__all__ = ["Convention", "JunctionKind", "JunctionZones", "ZoneSettings", "junction_zones"]
+__all__ = ["Convention", "JunctionKind", "JunctionZones", "ZoneSettings", "junction_zones", "zone_findings"]
 
 _LEAST_SHARE = 0.2  # of a segment inside its parents, above which it is flagged
 _WINDOW = 10.0  # radii of the junction that are searched for a change point
@@ -175,7 +177,8 @@ def junction_zones(network: Network, settings: ZoneSettings | None = None) -> Ju
 
     Notes
     -----
-    Tubes end flat at their nodes. Parallel vessels inside one another never exit: their distance is the
+    Volumes take tubes as flat at their nodes; exits take a trunk that parts as ending in a half sphere.
+    Parallel vessels inside one another never exit: their distance is the
     whole length, and half is cut.
 
     References
@@ -240,6 +243,44 @@ def junction_zones(network: Network, settings: ZoneSettings | None = None) -> Ju
         inverse_fourth_power_before=totals[:, 1],
         inverse_fourth_power_after=totals[:, 1] * (1.0 - gone),
     )
+
+
+def zone_findings(zones: JunctionZones, ids: Sequence[str]) -> tuple[Finding, ...]:
+    """Report segments that lie within their parents for more than a fifth, and those left as a link.
+
+    Parameters
+    ----------
+    zones : JunctionZones
+    ids : (s,) sequence of str
+        Of segments.
+
+    Returns
+    -------
+    tuple of Finding
+        In the order of segments: ``inside its parent`` (warning), then ``lumped link`` (note).
+
+    Examples
+    --------
+    >>> from types import SimpleNamespace
+    >>> found = SimpleNamespace(mostly_inside=np.array([True]), lumped_link=np.array([False]))
+    >>> found.share_inside = np.array([0.43])
+    >>> print(zone_findings(found, ["s1"])[0].message)
+    43 % of the length lies within the lumen of its parents (limit 20 %): its resistance depends on the convention
+    """
+    found = []
+    for row in np.flatnonzero(zones.mostly_inside | zones.lumped_link).tolist():
+        share = float(zones.share_inside[row])
+        if zones.mostly_inside[row]:
+            text = f"{100 * share:.0f} % of the length lies within the lumen of its parents (limit 20 %): "
+            text += "its resistance depends on the convention"
+            found.append(Finding("inside its parent", Severity.WARNING, text, ids[row], None, share, _LEAST_SHARE))
+        if zones.lumped_link[row]:
+            text = (
+                f"{1e3 * zones.length_left[row]:.3g} mm are left between junctions: a link with a resistance, no vessel"
+            )
+            left = float(zones.length_left[row])
+            found.append(Finding("lumped link", Severity.NOTE, text, ids[row], value=left, unit="m"))
+    return tuple(found)
 
 
 def _summed(values: FloatArray, owner: IntArray, count: int) -> FloatArray:

@@ -10,7 +10,15 @@ from scipy.spatial import cKDTree
 from scipy.spatial.transform import Rotation
 
 from geomprep.errors import InputError
-from geomprep.measure.junction_zones import Convention, JunctionKind, JunctionZones, ZoneSettings, junction_zones
+from geomprep.findings import Severity
+from geomprep.measure.junction_zones import (
+    Convention,
+    JunctionKind,
+    JunctionZones,
+    ZoneSettings,
+    junction_zones,
+    zone_findings,
+)
 from geomprep.model import Network, Nodes, Segments, Stations
 
 MM = 1e-3
@@ -287,6 +295,18 @@ def test_short_link_keeps_half() -> None:
     assert zones.length_left[4] == pytest.approx(1.5 * MM)
     assert zones.inverse_fourth_power_after[4] * MM**3 == pytest.approx(1.5 / 0.5**4)
     assert zones.inverse_fourth_power_before[4] * MM**3 == pytest.approx(3 / 0.5**4)
+
+
+def test_findings_name_segments_inside_and_links() -> None:
+    zones = junction_zones(link(3))
+    seen = zone_findings(zones, list("abcde"))
+    assert [(f.kind, f.severity, f.where) for f in seen] == [
+        ("inside its parent", Severity.WARNING, "e"),
+        ("lumped link", Severity.NOTE, "e"),
+    ]
+    assert [f.value for f in seen] == pytest.approx([2 / 3, 1.5 * MM])
+    assert seen[0].message.startswith("67 % of the length")
+    assert zone_findings(junction_zones(link(30)), list("abcde")) == ()
 
 
 @pytest.mark.parametrize(("length", "lumped"), [(3.9, True), (4.1, False)])
