@@ -172,7 +172,8 @@ def cross_sections(
     which the unit normals along the outline vary least, which is the axis of any cylinder or cone.
 
     What the marks cannot see: the mouth of a small branch whose axis still lies inside the lumen, up to
-    a tenth of the area; the junction zone is where to look for it.
+    a tenth of the area; the junction zone is where to look for it. What they see too often: the stairs of
+    a surface that was not smoothed, below about 12 voxels per diameter; take the areas of the mask there.
 
     Examples
     --------
