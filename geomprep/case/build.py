@@ -20,6 +20,7 @@ from geomprep.findings import Finding, Severity
 from geomprep.flow import steady_state
 from geomprep.literature import row, rows
 from geomprep.model import Basis, Network, Origin, Repair, SteadyState
+from geomprep.repair import STEPS
 
 __all__ = ["BuildResult", "build"]
 
@@ -163,6 +164,7 @@ _STEPS = (
     "read each file in a contained process and hold what the case states against its numbers",
     "mend radii that are zero, negative, missing, spikes or decayed ends",
     "join points and lines within each vessel class",
+    *(row.does for row in STEPS),
     "split into segments between junctions and open ends",
     "turn segments along a linear flow from inlets to outlets",
     "measure segments and junctions",
