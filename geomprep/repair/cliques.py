@@ -11,11 +11,13 @@ from geomprep.model import BoolArray, FloatArray, IntArray, PointGraph, Repair, 
 from geomprep.repair.branches import Branches
 from geomprep.repair.edits import with_merged_points
 from geomprep.repair.parts import components
+from geomprep.repair.records import Change, recorded
 from geomprep.repair.steps import Given, StepResult
+from geomprep.repair.verdicts import Verdict
 
 __all__ = ["CliqueSettings", "collapse_cliques"]
 
-_LEAVE, _COLLAPSE = "leave", "collapse"
+_OPTIONS = _, _COLLAPSE = "leave", "collapse"
 _FILLED = 3.0
 """Where lumen fills a knot, it may be so many times wider."""
 
@@ -88,9 +90,9 @@ def collapse_cliques(graph: PointGraph, settings: CliqueSettings, given: Given) 
     collapsed = np.zeros(count, np.bool_)
     for number in range(count):
         if given.verdicts.wanted(ids[number], bool(proposed[number])):
-            verdict = given.verdicts.settle(ids[number], (_LEAVE, _COLLAPSE), _COLLAPSE)
+            verdict = given.verdicts.settle(ids[number], _OPTIONS, _COLLAPSE)
             collapsed[number] = verdict.choice == _COLLAPSE
-            repairs.append(_record(graph, knots, number, (ids[number], verdict.choice, verdict.by)))
+            repairs.append(_record(graph, knots, number, ids[number], verdict))
     group = np.where((knots.group >= 0) & collapsed[knots.group], knots.group, -1)
     return StepResult(with_merged_points(graph, group), tuple(repairs))
 
@@ -167,22 +169,12 @@ def _anchors(graph: PointGraph, knots: _Knots) -> IntArray:
     return anchors
 
 
-def _record(graph: PointGraph, knots: _Knots, number: int, verdict: tuple[str, str, str]) -> Repair:
+def _record(graph: PointGraph, knots: _Knots, number: int, key: str, verdict: Verdict) -> Repair:
     """The repair of one knot."""
-    key, choice, by = verdict
     members = np.flatnonzero(knots.group == number)
-    raw = graph.source_point[members]
-    x, y, z = graph.points[members].mean(axis=0).tolist()
-    return Repair(
-        id=key,
-        kind="clique",
-        reason=(
-            f"{knots.junctions[number]} junctions with {knots.loops[number]} loop(s) between them lie within "
-            f"{knots.width[number]:.2g} radii: one junction"
-        ),
-        position=(x, y, z),
-        choice=choice,
-        options=(_LEAVE, _COLLAPSE),
-        verdict_by=by,
-        raw_points=tuple(raw[raw >= 0].tolist()) if choice == _COLLAPSE else (),
+    reason = (
+        f"{knots.junctions[number]} junctions with {knots.loops[number]} loop(s) between them lie within "
+        f"{knots.width[number]:.2g} radii: one junction"
     )
+    place, raw = graph.points[members].mean(axis=0), graph.source_point[members]
+    return recorded("clique", key, _OPTIONS, verdict, Change(reason=reason, place=place, raw=raw))

@@ -13,6 +13,7 @@ from geomprep.repair.branches import Branches
 from geomprep.repair.bridges import Bridge, bridge_lines, with_bridges
 from geomprep.repair.matching import best_matching
 from geomprep.repair.open_ends import Links, Tips, end_links, side_links, tips
+from geomprep.repair.records import Change, recorded
 from geomprep.repair.steps import Given, StepResult
 from geomprep.repair.verdicts import Zones
 
@@ -130,7 +131,20 @@ def close_gaps(graph: PointGraph, settings: GapSettings, given: Given) -> StepRe
         options = _options(graph, found, chosen.links, row, given)
         verdict = given.verdicts.settle(key, options, chosen.proposal[row])
         line = _line(graph, found, chosen.links, row, (verdict.choice, given.voxel))
-        repairs.append(_record(branches, found, chosen, row, (verdict.choice, verdict.by, options), line))
+        repairs.append(
+            recorded(
+                "gap",
+                key,
+                options,
+                verdict,
+                Change(
+                    reason=_reason(branches, found, chosen, row),
+                    place=0.5 * (line.points[0] + line.points[-1]),
+                    conductance=(0.0, line.conductance),
+                    score=float(chosen.score[row]),
+                ),
+            )
+        )
         if verdict.choice != LEAVE:
             bridges.append((row, line))
     assumed = tuple(
@@ -227,28 +241,6 @@ def _line(graph: PointGraph, found: Tips, links: Links, row: int, how: tuple[str
     ways = found.way[tip], found.way[other] if other >= 0 else None
     thin = 0.5 * voxel if choice == THREAD and voxel else None
     return bridge_lines(graph, (int(found.point[tip]), int(links.point[row])), ways, thin)
-
-
-def _record(
-    branches: Branches, found: Tips, chosen: _Chosen, row: int, verdict: tuple[str, str, tuple[str, ...]], line: Bridge
-) -> Repair:
-    """The repair of one gap."""
-    choice, by, options = verdict
-    links, graph = chosen.links, branches.graph
-    place = 0.5 * (graph.points[found.point[links.tip[row]]] + graph.points[links.point[row]])
-    x, y, z = place.tolist()
-    return Repair(
-        id=chosen.ids[row],
-        kind="gap",
-        reason=_reason(branches, found, chosen, row),
-        position=(x, y, z),
-        choice=choice,
-        options=options,
-        verdict_by=by,
-        score=float(chosen.score[row]),
-        conductance_before=0.0,
-        conductance_after=0.0 if choice == LEAVE else line.conductance,
-    )
 
 
 def _assumed(repair: Repair) -> Finding:

@@ -10,11 +10,13 @@ from geomprep.errors import InputError
 from geomprep.model import Basis, FloatArray, IntArray, PointGraph, Repair, anchor_ids
 from geomprep.repair.branches import Branches, conductance
 from geomprep.repair.edits import without_edges
+from geomprep.repair.records import Change, recorded
 from geomprep.repair.steps import Given, StepResult
+from geomprep.repair.verdicts import Verdict
 
 __all__ = ["HoleSettings", "fill_holes"]
 
-_LEAVE, _FILL = "leave", "fill"
+_OPTIONS = _, _FILL = "leave", "fill"
 _LOOKED_AT = 1.5
 _SAMPLES = 9
 _ONE_LUMEN = 0.5
@@ -107,7 +109,7 @@ def _round(
     for row, key in enumerate(ids.tolist()):
         if key in seen or not given.verdicts.wanted(key, bool(proposed[row])):
             continue
-        verdict = given.verdicts.settle(key, (_LEAVE, _FILL), _FILL)
+        verdict = given.verdicts.settle(key, _OPTIONS, _FILL)
         filled = verdict.choice == _FILL
         if filled:
             dropped_by[branches.chain_edges(pairs.chain[row, 1:])[0]] = number + len(repairs)
@@ -115,7 +117,7 @@ def _round(
             points[inner], radius[inner], basis[inner] = place, size, Basis.INTERPOLATED
         else:
             seen.add(key)
-        repairs.append(_record(branches, pairs, row, (key, verdict.choice, verdict.by)))
+        repairs.append(_record(branches, pairs, row, key, verdict))
     if (dropped_by < 0).all():
         return graph, repairs
     return without_edges(replace(graph, points=points, radius=radius, radius_basis=basis), dropped_by), repairs
@@ -204,28 +206,24 @@ def _scale(points: FloatArray, radius: FloatArray, wanted: float) -> float:
     return float(brentq(beyond, 0.2, 5.0)) if beyond(0.2) < 0.0 < beyond(5.0) else 1.0
 
 
-def _record(branches: Branches, pairs: _Pairs, row: int, verdict: tuple[str, str, str]) -> Repair:
+def _record(branches: Branches, pairs: _Pairs, row: int, key: str, verdict: Verdict) -> Repair:
     """The repair of one pair of arms."""
-    key, choice, by = verdict
     graph, one = branches.graph, pairs.nearness[row] < _ONE_LUMEN
-    point = branches.cut.point[branches.rows(pairs.chain[row, 1:])[0]]
-    raw = graph.source_point[point[1:-1]]
+    first, second = (branches.cut.point[branches.rows(pairs.chain[row, arm : arm + 1])[0]] for arm in (0, 1))
     both = float(pairs.conductance[row].sum())
-    first = branches.cut.point[branches.rows(pairs.chain[row, :1])[0]]
-    x, y, z = graph.points[first[len(first) // 2]].tolist()
-    filled = choice == _FILL
-    return Repair(
-        id=key,
-        kind="hole",
-        reason=(
-            f"two arms of {1e3 * branches.length[pairs.chain[row]].max():.3g} mm are at most {pairs.apart[row]:.2g} sums "
-            f"of their radii apart: {'one lumen drawn twice' if one else 'one vessel'}"
+    reason = (
+        f"two arms of {1e3 * branches.length[pairs.chain[row]].max():.3g} mm are at most {pairs.apart[row]:.2g} sums "
+        f"of their radii apart: {'one lumen drawn twice' if one else 'one vessel'}"
+    )
+    return recorded(
+        "hole",
+        key,
+        _OPTIONS,
+        verdict,
+        Change(
+            reason=reason,
+            place=graph.points[first[len(first) // 2]],
+            conductance=(both, float(pairs.conductance[row, 0]) if one else both),
+            raw=graph.source_point[second[1:-1]],
         ),
-        position=(x, y, z),
-        choice=choice,
-        options=(_LEAVE, _FILL),
-        verdict_by=by,
-        conductance_before=both,
-        conductance_after=float(pairs.conductance[row, 0]) if filled and one else both,
-        raw_points=tuple(raw[raw >= 0].tolist()) if filled else (),
     )

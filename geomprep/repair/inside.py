@@ -10,12 +10,14 @@ from geomprep.errors import InputError
 from geomprep.model import BoolArray, FloatArray, IntArray, PointGraph, Repair, anchor_ids
 from geomprep.repair.branches import Branches
 from geomprep.repair.edits import without_edges
+from geomprep.repair.records import Change, recorded
 from geomprep.repair.steps import Given, StepResult
 from geomprep.repair.tubes import near_tubes
+from geomprep.repair.verdicts import Verdict
 
 __all__ = ["CopySettings", "drop_copies"]
 
-_LEAVE, _DROP = "leave", "drop"
+_OPTIONS = _, _DROP = "leave", "drop"
 _ARTERY = 1
 _BEYOND = 1.25
 _ALONG = np.cos(np.radians(30.0))
@@ -86,13 +88,13 @@ def drop_copies(graph: PointGraph, settings: CopySettings, given: Given) -> Step
             continue
         chain = chosen[row : row + 1]
         artery = graph.vessel_class[branches.ends[chain[0], 0]] == _ARTERY
-        verdict = given.verdicts.settle(key, (_LEAVE, _DROP), _DROP if artery else None)
+        verdict = given.verdicts.settle(key, _OPTIONS, _DROP if artery else None)
         if verdict.choice == _DROP:
             dropped_by[branches.chain_edges(chain)[0]] = len(repairs)
         else:  # no later step bridges or drops what may be a doubled vessel
             protected[branches.ends[chain[0]]] = True
         found = float(apart[row]), float(ratio[row])
-        repairs.append(_record(branches, chain, found, (key, verdict.choice, verdict.by)))
+        repairs.append(_record(branches, chain, found, key, verdict))
     return StepResult(without_edges(replace(graph, protected=protected), dropped_by), tuple(repairs))
 
 
@@ -151,26 +153,23 @@ def _anchors(branches: Branches, chain: IntArray) -> IntArray:
     return anchors
 
 
-def _record(branches: Branches, chain: IntArray, found: tuple[float, float], verdict: tuple[str, str, str]) -> Repair:
+def _record(branches: Branches, chain: IntArray, found: tuple[float, float], key: str, verdict: Verdict) -> Repair:
     """The repair of one line."""
-    key, choice, by = verdict
-    graph, number = branches.graph, int(chain[0])
+    graph = branches.graph
     point = branches.cut.point[branches.rows(chain)[0]]
-    raw = graph.source_point[point]
-    before = float(branches.chain_conductance(chain)[0])
-    x, y, z = graph.points[point[len(point) // 2]].tolist()
-    return Repair(
-        id=key,
-        kind="copy of a vessel",
-        reason=(
-            f"a line of {1e3 * branches.length[number]:.3g} mm runs along another, at most {found[0]:.2g} of its radius "
-            f"off the axis, with {found[1]:.2g} times the other radius"
+    reason = (
+        f"a line of {1e3 * branches.length[chain[0]]:.3g} mm runs along another, at most {found[0]:.2g} of its radius "
+        f"off the axis, with {found[1]:.2g} times the other radius"
+    )
+    return recorded(
+        "copy of a vessel",
+        key,
+        _OPTIONS,
+        verdict,
+        Change(
+            reason=reason,
+            place=graph.points[point[len(point) // 2]],
+            conductance=(float(branches.chain_conductance(chain)[0]), 0.0),
+            raw=graph.source_point[point],
         ),
-        position=(x, y, z),
-        choice=choice,
-        options=(_LEAVE, _DROP),
-        verdict_by=by,
-        conductance_before=before,
-        conductance_after=0.0 if choice == _DROP else before,
-        raw_points=tuple(raw[raw >= 0].tolist()) if choice == _DROP else (),
     )

@@ -11,7 +11,9 @@ from geomprep.model import BoolArray, FloatArray, IntArray, PointGraph, Repair, 
 from geomprep.repair.branches import Branches
 from geomprep.repair.contacts import Contacts, link_contacts, shared_contacts
 from geomprep.repair.edits import with_doubled_points, without_edges
+from geomprep.repair.records import Change, recorded
 from geomprep.repair.steps import Given, StepResult
+from geomprep.repair.verdicts import Verdict
 
 __all__ = ["KissingSettings", "part_kissing"]
 
@@ -94,7 +96,7 @@ def part_kissing(graph: PointGraph, settings: KissingSettings, given: Given) -> 
                 dropped_by[branches.chain_edges(found.link[row : row + 1])[0]] = len(repairs)
             elif verdict.choice != LEAVE:
                 doubled.append(_second_vessel(branches, found, row, verdict.choice))
-            repairs.append(_record(branches, found, row, (key, verdict.choice, verdict.by, options)))
+            repairs.append(_record(branches, found, row, key, options, verdict))
     if doubled:
         point, edges, radius = (np.array(column) for column in zip(*doubled, strict=True))
         graph = with_doubled_points(graph, point, edges, radius)
@@ -146,23 +148,23 @@ def _second_vessel(branches: Branches, found: Contacts, row: int, choice: str) -
     return int(found.nodes[row, 0]), edges[2:], np.sqrt(size[:, 0] * size[:, 1])
 
 
-def _record(branches: Branches, found: Contacts, row: int, verdict: tuple[str, str, str, tuple[str, ...]]) -> Repair:
+def _record(
+    branches: Branches, found: Contacts, row: int, key: str, options: tuple[str, ...], verdict: Verdict
+) -> Repair:
     """The repair of one contact."""
-    key, choice, by, options = verdict
     graph, link = branches.graph, int(found.link[row])
-    before = float(branches.chain_conductance(found.link[row : row + 1])[0]) if link >= 0 else None
-    x, y, z = graph.points[found.nodes[row]].mean(axis=0).tolist()
     what = f"a link of {1e3 * branches.length[link]:.3g} mm joins" if link >= 0 else "one point joins"
     bends = " and ".join(f"{value:.0f}°" for value in np.degrees(found.bend[row]))
     sizes = " and ".join(f"{1e3 * value:.3g}" for value in found.size[row])
-    return Repair(
-        id=key,
-        kind="kissing vessels",
-        reason=f"{what} two vessels of radius {sizes} mm that go straight on there (they turn by {bends})",
-        position=(x, y, z),
-        choice=choice,
-        options=options,
-        verdict_by=by,
-        conductance_before=before,
-        conductance_after=before if before is None or choice == LEAVE else 0.0,
+    carried = float(branches.chain_conductance(found.link[row : row + 1])[0]) if link >= 0 else 0.0
+    return recorded(
+        "kissing vessels",
+        key,
+        options,
+        verdict,
+        Change(
+            reason=f"{what} two vessels of radius {sizes} mm that go straight on there (they turn by {bends})",
+            place=graph.points[found.nodes[row]].mean(axis=0),
+            conductance=(carried, 0.0) if link >= 0 else None,
+        ),
     )

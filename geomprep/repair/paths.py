@@ -12,11 +12,13 @@ from geomprep.errors import InputError
 from geomprep.findings import Finding, Severity
 from geomprep.model import FloatArray, IntArray, PointGraph, Repair, anchor_ids, raw_order
 from geomprep.repair.branches import Branches
+from geomprep.repair.records import Change, recorded
 from geomprep.repair.steps import Given, StepResult
+from geomprep.repair.verdicts import Verdict
 
 __all__ = ["PathSettings", "smooth_paths"]
 
-_LEAVE, _SMOOTH = "leave", "smooth"
+_OPTIONS = _LEAVE, _SMOOTH = "leave", "smooth"
 _PENALTIES = 10.0 ** np.arange(-1.0, 7.6, 0.5)
 _FIXED = 1e9
 _LARGEST = 4.0
@@ -82,10 +84,10 @@ def smooth_paths(graph: PointGraph, settings: PathSettings, given: Given) -> Ste
     if not noise:
         return StepResult(graph, (), _jagged_finding(branches))
     key = str(anchor_ids("paths", graph.raw_points, _anchors(graph))[0])
-    verdict = given.verdicts.settle(key, (_LEAVE, _SMOOTH), _SMOOTH)
+    verdict = given.verdicts.settle(key, _OPTIONS, _SMOOTH)
     place = _smoothed(branches, noise)
     moved = np.linalg.norm(place - graph.points, axis=1)
-    repair = _record(branches, place, moved, (key, verdict.choice, verdict.by))
+    repair = _record(branches, place, moved, key, verdict)
     if verdict.choice == _LEAVE or not moved.any():
         return StepResult(graph, (repair,) if moved.any() else ())
     return StepResult(replace(graph, points=place), (repair,))
@@ -153,28 +155,18 @@ def _solved(raw: FloatArray, offsets: IntArray, penalty: float) -> FloatArray:
     return solution
 
 
-def _record(branches: Branches, place: FloatArray, moved: FloatArray, verdict: tuple[str, str, str]) -> Repair:
+def _record(branches: Branches, place: FloatArray, moved: FloatArray, key: str, verdict: Verdict) -> Repair:
     """The one repair of all paths."""
-    key, choice, by = verdict
     graph, cut = branches.graph, branches.cut
     before = float(branches.length.sum())
     after = float(arc_length(place[cut.point], cut.offsets)[cut.offsets[1:] - 1].sum())
     rms = float(np.sqrt((moved[moved > 0] ** 2).mean() / 3.0)) if moved.any() else 0.0
-    x, y, z = graph.points[int(np.argmax(moved))].tolist()
-    raw = graph.source_point[(moved > 0) & (graph.source_point >= 0)]
-    return Repair(
-        id=key,
-        kind="smoothed paths",
-        reason=(
-            f"{np.count_nonzero(moved)} points moved by {1e3 * rms:.3g} mm along each axis in the root mean square and "
-            f"{1e3 * moved.max():.3g} mm at most; length {1e3 * before:.5g} mm before, {1e3 * after:.5g} mm after"
-        ),
-        position=(x, y, z),
-        choice=choice,
-        options=(_LEAVE, _SMOOTH),
-        verdict_by=by,
-        raw_points=tuple(raw.tolist()) if choice == _SMOOTH else (),
+    reason = (
+        f"{np.count_nonzero(moved)} points moved by {1e3 * rms:.3g} mm along each axis in the root mean square and "
+        f"{1e3 * moved.max():.3g} mm at most; length {1e3 * before:.5g} mm before, {1e3 * after:.5g} mm after"
     )
+    spot, raw = graph.points[int(np.argmax(moved))], graph.source_point[moved > 0]
+    return recorded("smoothed paths", key, _OPTIONS, verdict, Change(reason=reason, place=spot, raw=raw))
 
 
 def _jagged_finding(branches: Branches) -> tuple[Finding, ...]:

@@ -10,12 +10,14 @@ from geomprep.errors import InputError
 from geomprep.model import BoolArray, FloatArray, IntArray, PointGraph, Repair, anchor_ids
 from geomprep.repair.branches import Branches
 from geomprep.repair.edits import without_edges
+from geomprep.repair.records import Change, recorded
 from geomprep.repair.steps import Given, StepResult
 from geomprep.repair.tubes import near_tubes
+from geomprep.repair.verdicts import Verdict
 
 __all__ = ["SpurSettings", "drop_spurs"]
 
-_LEAVE, _DROP = "leave", "drop"
+_OPTIONS = _LEAVE, _DROP = "leave", "drop"
 _LOOKED_AT = 1.5
 """Branches that must reach farther beyond the parent's tube than this many times the limit are not looked at."""
 
@@ -120,8 +122,8 @@ def _round(
         key, at = ids[row], int(base[row])
         if at in taken or key in declined or not given.verdicts.wanted(key, bool(proposed[row])):
             continue
-        verdict = given.verdicts.settle(key, (_LEAVE, _DROP), _DROP)
-        repair = _record(branches, found, row, (key, verdict.choice, verdict.by))
+        verdict = given.verdicts.settle(key, _OPTIONS, _DROP)
+        repair = _record(branches, found, row, key, verdict)
         if verdict.choice == _LEAVE:
             declined.add(key)
         else:
@@ -199,28 +201,24 @@ def _excess(branches: Branches, chosen: IntArray, places: tuple[IntArray, IntArr
     return excess
 
 
-def _record(branches: Branches, found: _Candidates, row: int, verdict: tuple[str, str, str]) -> Repair:
+def _record(branches: Branches, found: _Candidates, row: int, key: str, verdict: Verdict) -> Repair:
     """The repair of one spur."""
-    key, choice, by = verdict
     graph, chain = branches.graph, found.chain[row : row + 1]
     point = branches.cut.point[branches.rows(chain)[0]]
-    tip = branches.ends[found.chain[row], found.side[row]]
-    raw = graph.source_point[point[branches.degree[point] < 3]]
-    before = float(branches.chain_conductance(chain)[0])
-    x, y, z = graph.points[tip].tolist()
-    return Repair(
-        id=key,
-        kind="spur",
-        reason=(
-            f"a branch of {1e3 * branches.length[found.chain[row]]:.3g} mm reaches {1e3 * found.outside[row]:.3g} mm "
-            f"beyond the tube of its parent (radius {1e3 * found.parent[row]:.3g} mm); its own radius is "
-            f"{1e3 * found.own[row]:.3g} mm"
+    reason = (
+        f"a branch of {1e3 * branches.length[found.chain[row]]:.3g} mm reaches {1e3 * found.outside[row]:.3g} mm "
+        f"beyond the tube of its parent (radius {1e3 * found.parent[row]:.3g} mm); its own radius is "
+        f"{1e3 * found.own[row]:.3g} mm"
+    )
+    return recorded(
+        "spur",
+        key,
+        _OPTIONS,
+        verdict,
+        Change(
+            reason=reason,
+            place=graph.points[branches.ends[found.chain[row], found.side[row]]],
+            conductance=(float(branches.chain_conductance(chain)[0]), 0.0),
+            raw=graph.source_point[point[branches.degree[point] < 3]],
         ),
-        position=(x, y, z),
-        choice=choice,
-        options=(_LEAVE, _DROP),
-        verdict_by=by,
-        conductance_before=before,
-        conductance_after=0.0 if choice == _DROP else before,
-        raw_points=tuple(raw[raw >= 0].tolist()) if choice == _DROP else (),
     )

@@ -11,11 +11,13 @@ from geomprep.errors import InputError
 from geomprep.model import VESSEL_CLASSES, FloatArray, IntArray, PointGraph, Repair, anchor_ids, raw_order
 from geomprep.repair.edits import without_edges
 from geomprep.repair.parts import components
+from geomprep.repair.records import Change, recorded
 from geomprep.repair.steps import Given, StepResult
+from geomprep.repair.verdicts import Verdict
 
 __all__ = ["StraySettings", "drop_stray"]
 
-_KEEP, _DROP = "leave", "drop"
+_OPTIONS = _, _DROP = "leave", "drop"
 _BEYOND = 1.25
 
 
@@ -93,10 +95,10 @@ def drop_stray(graph: PointGraph, settings: StraySettings, given: Given) -> Step
     fate = np.full(count, -1, np.int64)
     for part, key in zip(rows.tolist(), ids.tolist(), strict=True):
         if given.verdicts.wanted(key, bool(proposed[part])):
-            verdict = given.verdicts.settle(key, (_KEEP, _DROP), _DROP)
+            verdict = given.verdicts.settle(key, _OPTIONS, _DROP)
             if verdict.choice == _DROP:
                 fate[part] = len(repairs)
-            repairs.append(_record(graph, (parts, label, part), (key, verdict.choice, verdict.by)))
+            repairs.append(_record(graph, (parts, label, part), key, verdict))
     return StepResult(without_edges(graph, fate[parts.of_edge]), tuple(repairs))
 
 
@@ -128,23 +130,13 @@ def _anchors(graph: PointGraph, label: IntArray, parts: IntArray) -> IntArray:
     )
 
 
-def _record(graph: PointGraph, where: tuple[_Parts, IntArray, int], verdict: tuple[str, str, str]) -> Repair:
+def _record(graph: PointGraph, where: tuple[_Parts, IntArray, int], key: str, verdict: Verdict) -> Repair:
     """The repair of one part."""
     parts, label, part = where
-    key, choice, by = verdict
     members = np.flatnonzero(label == part)
-    raw = graph.source_point[members]
-    x, y, z = graph.points[members].mean(axis=0).tolist()
-    return Repair(
-        id=key,
-        kind="stray part",
-        reason=(
-            f"a part of {1e3 * parts.length[part]:.3g} mm and {1e9 * parts.volume[part]:.3g} mm³ hangs together with "
-            f"nothing else; the longest of its class has {1e3 * parts.longest[part]:.3g} mm"
-        ),
-        position=(x, y, z),
-        choice=choice,
-        options=(_KEEP, _DROP),
-        verdict_by=by,
-        raw_points=tuple(raw[raw >= 0].tolist()) if choice == _DROP else (),
+    reason = (
+        f"a part of {1e3 * parts.length[part]:.3g} mm and {1e9 * parts.volume[part]:.3g} mm³ hangs together with "
+        f"nothing else; the longest of its class has {1e3 * parts.longest[part]:.3g} mm"
     )
+    place, raw = graph.points[members].mean(axis=0), graph.source_point[members]
+    return recorded("stray part", key, _OPTIONS, verdict, Change(reason=reason, place=place, raw=raw))
