@@ -12,7 +12,10 @@ from __future__ import annotations
 import json
 import os
 import sys
+from collections.abc import Callable
 from typing import Any
+
+Answer = tuple[dict[str, Any], list[tuple[str, str, Any]]]
 
 
 def main() -> None:
@@ -64,15 +67,27 @@ def _hand_over(arrays: list[tuple[str, str, Any]], output: int) -> list[dict[str
 _LIBRARIES = {"vtk xml": "vtkmodules.vtkIOXML", "vtk legacy": "vtkmodules.vtkIOLegacy"}
 
 
-def _vtk_reader(kind: str) -> Any:
+def _every_array(reader: Any, kind: str) -> None:
+    """Legacy files: read all arrays of a kind, not the first only."""
+    if kind == "vtk legacy":
+        for every in ("Scalars", "Vectors", "Normals", "Tensors", "ColorScalars", "TCoords", "Fields"):
+            getattr(reader, f"ReadAll{every}On")()
+
+
+def _vtk_reader(
+    kind: str,
+    libraries: dict[str, str] = _LIBRARIES,
+    prepare: Callable[[Any, str], None] = _every_array,
+    gather: Callable[[Any, Any], Answer] | None = None,
+) -> Any:
     """Load VTK's readers; what comes back reads a file with the one that the order names."""
     from importlib import import_module
 
-    library = import_module(_LIBRARIES[kind])
+    library = import_module(libraries[kind])
     from vtkmodules.util.numpy_support import vtk_to_numpy  # noqa: F401  loaded while there is time
     from vtkmodules.vtkCommonCore import vtkOutputWindow, vtkStringOutputWindow
 
-    def read(path: str, order: dict[str, Any]) -> tuple[dict[str, Any], list[tuple[str, str, Any]]]:
+    def read(path: str, order: dict[str, Any]) -> Answer:
         window = vtkStringOutputWindow()
         vtkOutputWindow.SetInstance(window)
         reader = getattr(library, order["reader"])()
@@ -80,9 +95,7 @@ def _vtk_reader(kind: str) -> Any:
         for event in ("ErrorEvent", "WarningEvent"):
             reader.AddObserver(event, _listener(faults))
         reader.SetFileName(path)
-        if kind == "vtk legacy":
-            for every in ("Scalars", "Vectors", "Normals", "Tensors", "ColorScalars", "TCoords", "Fields"):
-                getattr(reader, f"ReadAll{every}On")()
+        prepare(reader, kind)
         reader.Update()
         faults += [window.GetOutput()] if window.GetOutput().strip() else []
         if reader.GetErrorCode():
@@ -90,7 +103,7 @@ def _vtk_reader(kind: str) -> Any:
         data = reader.GetOutput()
         if faults or data is None:
             return {"faults": faults or ["nothing was read"]}, []
-        return _gather(data)
+        return gather(data, reader) if gather else _gather(data)
 
     return read
 
@@ -105,7 +118,7 @@ def _listener(faults: list[str]) -> Any:
     return heard
 
 
-def _gather(data: Any) -> tuple[dict[str, Any], list[tuple[str, str, Any]]]:
+def _gather(data: Any) -> Answer:
     """Arrays and counts of one VTK data set."""
     arrays: list[tuple[str, str, Any]] = []
     counts: dict[str, list[int]] = {}
@@ -171,13 +184,13 @@ def _mesh_reader() -> Any:
 
     warnings.simplefilter("error")  # numpy only warns when numbers are missing
 
-    def read(path: str, order: dict[str, Any]) -> tuple[dict[str, Any], list[tuple[str, str, Any]]]:
+    def read(path: str, order: dict[str, Any]) -> Answer:
         return _gather_mesh(meshio.read(path, file_format=order["reader"]))
 
     return read
 
 
-def _gather_mesh(mesh: Any) -> tuple[dict[str, Any], list[tuple[str, str, Any]]]:
+def _gather_mesh(mesh: Any) -> Answer:
     """Arrays and counts of one mesh: the two-point lines of all its blocks."""
     import numpy as np
 

@@ -73,19 +73,21 @@ class Child:
     Parameters
     ----------
     library : str
-        ``vtk xml``, ``vtk legacy`` or ``meshio``.
+        One that the program knows, such as ``vtk xml`` or ``meshio``.
     name : str
         Name of the file as given, for messages.
     limits : ReadLimits
         Bounds of memory and time.
+    program : str
+        File beside this one that the process runs.
     """
 
-    def __init__(self, library: str, name: str, limits: ReadLimits) -> None:
+    def __init__(self, library: str, name: str, limits: ReadLimits, program: str = "child.py") -> None:
         self._name, self._limits, self._library = name, limits, library
         self._output = _anonymous_file()
-        program = str(Path(__file__).with_name("child.py"))
+        place = str(Path(__file__).with_name(program))
         paths = json.dumps([path for path in sys.path if path])
-        command = [sys.executable, "-I", program, paths, library, str(self._output)]
+        command = [sys.executable, "-I", place, paths, library, str(self._output)]
         environment = {**os.environ, "OPENBLAS_NUM_THREADS": "1", "OMP_NUM_THREADS": "1"}
         self._process = subprocess.Popen(
             command,

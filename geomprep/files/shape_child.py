@@ -27,34 +27,10 @@ def _shared() -> Any:
     return module
 
 
-def _reader_of(shared: Any, kind: str) -> Any:
-    """Load a library of VTK; what comes back reads a file with the reader that the order names."""
-    from importlib import import_module
-
-    library = import_module(_LIBRARIES[kind])
-    from vtkmodules.util.numpy_support import vtk_to_numpy  # noqa: F401  loaded while there is time
-    from vtkmodules.vtkCommonCore import vtkOutputWindow, vtkStringOutputWindow
-
-    def read(path: str, order: dict[str, Any]) -> Answer:
-        window = vtkStringOutputWindow()
-        vtkOutputWindow.SetInstance(window)
-        reader = getattr(library, order["reader"])()
-        faults: list[str] = []
-        for event in ("ErrorEvent", "WarningEvent"):
-            reader.AddObserver(event, shared._listener(faults))
-        reader.SetFileName(path)
-        if kind == "stl":
-            reader.MergingOff()  # every triangle comes back, so that their number can be compared
-        reader.Update()
-        faults += [window.GetOutput()] if window.GetOutput().strip() else []
-        if reader.GetErrorCode():
-            faults.append(f"error code {reader.GetErrorCode()}")
-        data = reader.GetOutput()
-        if faults or data is None:
-            return {"faults": faults or ["nothing was read"]}, []
-        return _image(shared, data, reader) if data.IsA("vtkImageData") else _surface(shared, data)
-
-    return read
+def _prepare(reader: Any, kind: str) -> None:
+    """Every triangle of an STL file comes back, so that their number can be compared."""
+    if kind == "stl":
+        reader.MergingOff()
 
 
 def _surface(shared: Any, data: Any) -> Answer:
@@ -95,7 +71,12 @@ def _numbers(matrix: Any, size: int) -> list[list[float]] | None:
 def main() -> None:
     """Let the shared program run with these readers."""
     shared = _shared()
-    shared._vtk_reader = lambda kind: _reader_of(shared, kind)
+    of_lines = shared._vtk_reader
+
+    def gather(data: Any, reader: Any) -> Answer:
+        return _image(shared, data, reader) if data.IsA("vtkImageData") else _surface(shared, data)
+
+    shared._vtk_reader = lambda kind: of_lines(kind, _LIBRARIES, _prepare, gather)
     shared.main()
 
 

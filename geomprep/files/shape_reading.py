@@ -3,16 +3,12 @@
 from __future__ import annotations
 
 import hashlib
-import json
-import os
-import subprocess
-import sys
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
 from geomprep.errors import FileError
-from geomprep.files.contained import Child, Parsed, ReadLimits, _anonymous_file
+from geomprep.files.contained import Child, Parsed, ReadLimits
 from geomprep.files.layout import Layout
 from geomprep.files.reading import _bytes, _shown, _stamp
 
@@ -57,24 +53,6 @@ class ImageLayout(Layout):
     frame: str = ""
 
 
-class _ShapeChild(Child):
-    """The contained process with the program for surfaces and masks."""
-
-    def __init__(self, library: str, name: str, limits: ReadLimits) -> None:
-        self._name, self._limits, self._library = name, limits, library
-        self._output = _anonymous_file()
-        program = str(Path(__file__).with_name("shape_child.py"))
-        paths = json.dumps([path for path in sys.path if path])
-        self._process = subprocess.Popen(
-            [sys.executable, "-I", program, paths, library, str(self._output)],
-            stdin=subprocess.PIPE,
-            stdout=subprocess.PIPE,
-            stderr=subprocess.DEVNULL,
-            pass_fds=(self._output,),
-            env={**os.environ, "OPENBLAS_NUM_THREADS": "1", "OMP_NUM_THREADS": "1"},
-        )
-
-
 def parsed_shape(
     path: str | Path, formats: Sequence[ShapeFormat], limits: ReadLimits
 ) -> tuple[str, str, Layout, Parsed]:
@@ -113,7 +91,7 @@ def parsed_shape(
         said = f"suffix '{place.suffix}' is not read here" if place.suffix else "has no suffix"
         raise FileError(name, f"{said}; one of {', '.join(row.suffix for row in formats)} is needed")
     stamp = _stamp(place, name)
-    child = _ShapeChild(row.library, name, limits)
+    child = Child(row.library, name, limits, "shape_child.py")
     try:
         data = _bytes(place, name)
         layout = row.layout(name, data)
