@@ -167,6 +167,7 @@ _STEPS = (
     *(row.does for row in STEPS),
     "split into segments between junctions and open ends",
     "turn segments along a linear flow from inlets to outlets",
+    "take off what lies inside parents, by the convention of the case",
     "measure segments and junctions",
     "assign blood, surroundings, walls, lumped values, inlets and outlets",
     "solve the linear steady state",

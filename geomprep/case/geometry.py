@@ -19,7 +19,15 @@ from geomprep.export import InputRecord, SettingRecord
 from geomprep.files import FileContents, read_files
 from geomprep.files.meaning import to_centrelines
 from geomprep.findings import Finding
-from geomprep.measure import junctions, measure_segments
+from geomprep.measure import (
+    Convention,
+    ZoneSettings,
+    junction_zones,
+    junctions,
+    measure_segments,
+    trimmed,
+    zone_findings,
+)
 from geomprep.model import BoolArray, Centrelines, FloatArray, Network, Repair, concatenate
 from geomprep.repair import OPEN, Given, StepResult, join, mend_graph, mend_radii
 from geomprep.segments import leave_out_unreached, order_segments, orient, resample, split
@@ -128,9 +136,18 @@ def _with_ends(case: Case, cut: _Cut, progress: Progress) -> Drawn:
     progress("orient", 0.6)
     network = orient(ends.network, ends.inlet_nodes, ends.outlet_nodes)
     ordered = order_segments(network, ends.inlet_nodes, ends.outlet_nodes)
-    network = junctions(measure_segments(ordered.network))
-    findings = (*cut.findings, *named.findings, *ends.findings, *ordered.findings)
+    progress("measure", 0.65)
+    network, zones = _trimmed(case, ordered.network)
+    network = junctions(measure_segments(network))
+    findings = (*cut.findings, *named.findings, *ends.findings, *ordered.findings, *zones)
     return Drawn(network, ends, cut.inputs, findings, (*cut.repairs, *reached.repairs), cut.settings)
+
+
+def _trimmed(case: Case, network: Network) -> tuple[Network, tuple[Finding, ...]]:
+    """Take off what lies inside parents, by the convention of the case."""
+    convention = Convention[case.segments.vessels_start_at.upper().replace(" ", "_")]
+    zones = junction_zones(network, ZoneSettings(convention))
+    return trimmed(network, zones), zone_findings(zones, network.segments.id.tolist())
 
 
 def _cut(case: Case, progress: Progress) -> _Cut:

@@ -87,6 +87,7 @@ class SegmentsSection:
     """``[segments]``: no spacing = stations as drawn."""
 
     station_spacing: StationSpacing | None = None
+    vessels_start_at: str = "lumen exit"
 
 
 @dataclass(frozen=True)

@@ -105,7 +105,13 @@ def _root(network: Network, state: SteadyState, context: ExportContext) -> Flat:
 def _conventions(network: Network, state: SteadyState, context: ExportContext) -> Flat:
     """Fixed sentences, and frame, posture, gravity of the case."""
     own = {key: getattr(context, key) for key in ("frame", "posture", "reference_height")}
-    return {**own, "gravity": np.asarray(context.gravity, dtype=np.float64) + 0.0, **CONVENTIONS}
+    start = network.cuts.convention if network.cuts is not None else "node"
+    return {
+        **own,
+        "vessels_start_at": start,
+        "gravity": np.asarray(context.gravity, dtype=np.float64) + 0.0,
+        **CONVENTIONS,
+    }
 
 
 def _blood(network: Network, state: SteadyState, context: ExportContext) -> Flat:
@@ -133,6 +139,15 @@ def _segments(network: Network, state: SteadyState, context: ExportContext) -> F
         "vessel_class": _named(network.segments.vessel_class, VESSEL_CLASSES),
         "tube_law": _named(walls.law, tuple(law.id for law in walls.laws)),
     }
+
+
+def _zones(network: Network, state: SteadyState, context: ExportContext) -> Flat:
+    """What was cut off; nothing where no stage has cut."""
+    if network.cuts is not None:
+        return {"kind": _named(network.cuts.link, ("vessel", "link"))}
+    none = np.zeros(len(network.segments))
+    kind = ["vessel"] * len(network.segments)
+    return {"cut_at_from": none, "cut_at_to": none, "share_inside": none, "kind": kind}
 
 
 def _junctions(network: Network, state: SteadyState, context: ExportContext) -> Flat:
@@ -193,6 +208,7 @@ _MAKERS: dict[str, Callable[[Network, SteadyState, ExportContext], Any]] = {
     "tube_laws": _tube_laws,
     "nodes": _nodes,
     "segments": _segments,
+    "segments.zones": _zones,
     "segments.lumped": lambda network, state, context: {"at_state": IMAGED},
     "junctions": _junctions,
     "inlets": lambda network, state, context: [_table(row) for row in network.inlets or ()],

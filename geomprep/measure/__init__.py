@@ -2,17 +2,20 @@
 
 from geomprep.measure.cross_sections import cross_sections
 from geomprep.measure.curves import curvature, tortuosity
-from geomprep.measure.junction_zones import junction_zones
+from geomprep.measure.junction_zones import Convention, ZoneSettings, junction_zones, zone_findings
 from geomprep.measure.junctions import junctions
 from geomprep.measure.mask_areas import VoxelGrid, mask_areas
 from geomprep.measure.narrowings import narrowings
 from geomprep.measure.profiles import radius_profiles
 from geomprep.measure.resolution import resolution, unresolved_share
 from geomprep.measure.segments import measure_segments
+from geomprep.measure.trim import trimmed
 from geomprep.measure.uncertainty import intervals
 
 __all__ = [
+    "Convention",
     "VoxelGrid",
+    "ZoneSettings",
     "cross_sections",
     "curvature",
     "intervals",
@@ -24,5 +27,7 @@ __all__ = [
     "radius_profiles",
     "resolution",
     "tortuosity",
+    "trimmed",
     "unresolved_share",
+    "zone_findings",
 ]

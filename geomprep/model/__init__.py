@@ -9,6 +9,7 @@ from geomprep.model.history import Decision, Repair
 from geomprep.model.ids import anchor_ids, raw_order
 from geomprep.model.network import (
     NODE_ROLES,
+    Cuts,
     Junctions,
     Lumped,
     Measures,
@@ -33,6 +34,7 @@ __all__ = [
     "BoolArray",
     "Centrelines",
     "Chains",
+    "Cuts",
     "Decision",
     "Field",
     "FieldTable",

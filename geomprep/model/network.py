@@ -17,6 +17,7 @@ from geomprep.model.parameters import Blood, Inlet, Outlet, Surroundings, TubeLa
 
 __all__ = [
     "NODE_ROLES",
+    "Cuts",
     "Junctions",
     "Lumped",
     "Measures",
@@ -235,6 +236,38 @@ class Measures(_FloatTable):
 
 
 @dataclass(frozen=True, eq=False)
+class Cuts:
+    """What was taken off each segment because it lies inside its parents.
+
+    Attributes
+    ----------
+    convention : str
+        Where a vessel starts: ``node``, ``lumen exit`` or ``change point``.
+    at_from, at_to : (s,) float array
+        Length taken off at the two ends, m: between the node and the first or last station.
+    share_inside : (s,) float array
+        Length within the lumen of the parents over the whole length.
+    link : (s,) uint8 array
+        1 where half of the segment or more lies inside, or it joins forks of one junction: what is left is a
+        resistance, no vessel.
+    """
+
+    convention: str
+    at_from: FloatArray
+    at_to: FloatArray
+    share_inside: FloatArray
+    link: Uint8Array
+
+    def __post_init__(self) -> None:
+        """Make the arrays read-only and check that they fit together."""
+        put = object.__setattr__
+        for name in ("at_from", "at_to", "share_inside"):
+            put(self, name, frozen(name, getattr(self, name), np.float64))
+        put(self, "link", frozen("link", self.link, np.uint8))
+        same_length(at_from=self.at_from, at_to=self.at_to, share_inside=self.share_inside, link=self.link)
+
+
+@dataclass(frozen=True, eq=False)
 class Junctions:
     """How segment ends meet at nodes of degree 2 or more.
 
@@ -317,6 +350,7 @@ class Network:
     segments: Segments
     stations: Stations
     measures: Measures | None = None
+    cuts: Cuts | None = None
     junctions: Junctions | None = None
     blood: Blood | None = None
     surroundings: tuple[Surroundings, ...] | None = None

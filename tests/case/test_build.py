@@ -37,9 +37,12 @@ def test_pressure_on_the_lines_meets_the_nodes(tmp_path: Path) -> None:
     offsets, segments = network.stations.offsets, network.segments
     # gravity points along +y in LPS when supine: height is −y
     height = -network.stations.position[:, 1]
-    pressure = station_pressure(network, state, height)
-    np.testing.assert_allclose(pressure[offsets[:-1]], state.pressure[segments.from_node], rtol=1e-9, atol=1e-6)
-    np.testing.assert_allclose(pressure[offsets[1:] - 1], state.pressure[segments.to_node], rtol=1e-9, atol=1e-6)
+    # a vessel starts where it leaves its parent; between the node and there the head is that of the node
+    head = station_pressure(network, state, height) + network.blood.density * 9.80665 * height
+    at_node = state.pressure + network.blood.density * 9.80665 * network.nodes.height
+    np.testing.assert_allclose(head[offsets[:-1]], at_node[segments.from_node], rtol=1e-9, atol=1e-6)
+    np.testing.assert_allclose(head[offsets[1:] - 1], at_node[segments.to_node], rtol=1e-9, atol=1e-6)
+    assert (network.cuts.at_from > 0).any()
 
 
 def test_the_input_is_never_touched(tmp_path: Path) -> None:

@@ -71,7 +71,8 @@ def test_renal_tree_builds_once_array_and_unit_are_named(tmp_path: Path) -> None
     # 22 points, 21 two-point lines (SOURCE.md): a tree, so one node more than segments
     assert len(result.network.nodes) == len(result.network.segments) + 1
     drawn = np.linalg.norm(np.diff(contents.points[contents.connectivity.reshape(-1, 2)], axis=1), axis=2).sum()
-    assert result.network.measures.length.sum() == pytest.approx(1e-3 * drawn, rel=1e-6)
+    cuts = result.network.cuts.at_from.sum() + result.network.cuts.at_to.sum()
+    assert result.network.measures.length.sum() + cuts == pytest.approx(1e-3 * drawn, rel=1e-6)
     assert any(finding.kind == "stored length" for finding in result.findings)
 
 

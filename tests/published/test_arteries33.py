@@ -28,6 +28,8 @@ arterial_pressure = "93 mmHg"
 [walls.artery]
 stiffness = "user"
 wave_speed = "8 m/s"
+[segments]
+vessels_start_at = "node"
 [blood]
 viscosity = "4 mPa*s"
 density = "1060 kg/m^3"

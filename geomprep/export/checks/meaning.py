@@ -157,8 +157,8 @@ def station_faults(flat: Mapping[str, Any]) -> Iterator[Fault]:
     checks = {
         "the distance of its first station must be 0": distance[first] != 0,
         "its last station must lie at its length": np.abs(distance[last] / segments["length"] - 1.0) > _EXACT,
-        "its first station must lie at from_node": _apart(flat, first, "from_node") > _EXACT * segments["length"],
-        "its last station must lie at to_node": _apart(flat, last, "to_node") > _EXACT * segments["length"],
+        "its first station must lie at from_node, or as far off as is cut": _too_far(flat, first, "from"),
+        "its last station must lie at to_node, or as far off as is cut": _too_far(flat, last, "to"),
         "radii.at_from must be the radius of its first station": _differ(_radii(flat, "at_from"), flat, first),
         "radii.at_to must be the radius of its last station": _differ(_radii(flat, "at_to"), flat, last),
     }
@@ -187,7 +187,8 @@ def _differ(said: Any, flat: Mapping[str, Any], station: Any) -> Any:
     return np.abs(said / flat["stations"]["radius"][station] - 1.0) > _EXACT
 
 
-def _apart(flat: Mapping[str, Any], station: Any, end: str) -> Any:
-    """Distance between stations and the nodes at an end of their segments."""
-    node = np.asarray(flat["segments"][end])
-    return np.linalg.norm(flat["stations"]["position"][station] - flat["nodes"]["position"][node], axis=1)
+def _too_far(flat: Mapping[str, Any], station: Any, end: str) -> Any:
+    """Whether stations lie farther from the nodes at an end of their segments than the length cut off there."""
+    node = np.asarray(flat["segments"][f"{end}_node"])
+    apart = np.linalg.norm(flat["stations"]["position"][station] - flat["nodes"]["position"][node], axis=1)
+    return apart > flat["segments.zones"][f"cut_at_{end}"] * (1 + _EXACT) + _EXACT * flat["segments"]["length"]
