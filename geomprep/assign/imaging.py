@@ -119,7 +119,10 @@ def imaging_transmural(
 
 
 _ALWAYS = "stations.position, blood.density, surroundings.pressure"
-_SOLVED = "segments.integrals.inverse_fourth_power, blood.viscosity, inlets.mean_flow, outlets.far_pressure"
+_SOLVED = (
+    "segments.integrals.inverse_fourth_power, segments.friction_shape, blood.viscosity, "
+    "inlets.mean_flow, outlets.far_pressure"
+)
 
 
 def _standing(network: Network, nodes: IntArray, field: Gravity, pressure: float, here: BoolArray) -> FloatArray:

@@ -15,7 +15,7 @@ __all__ = ["blood_column", "losses_text", "node_parts", "path_of_losses", "segme
 
 
 def segment_resistance(network: Network) -> FloatArray:
-    """Return the resistance of every segment on its imaged radii, Pa·s/m³.
+    """Return the resistance of every segment on its imaged radii and outlines, Pa·s/m³.
 
     Raises
     ------
@@ -24,7 +24,9 @@ def segment_resistance(network: Network) -> FloatArray:
     """
     if network.measures is None or network.blood is None:
         raise ModelError("resistances need measures and blood; measure the segments and assign blood first")
-    return resistance(network.measures.inverse_fourth_power, network.blood.viscosity, network.blood.velocity_profile)
+    blood = network.blood
+    circular = resistance(network.measures.inverse_fourth_power, blood.viscosity, blood.velocity_profile)
+    return circular * network.segments.friction_shape
 
 
 def blood_column(network: Network, height: FloatArray) -> FloatArray:

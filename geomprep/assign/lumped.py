@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
+from geomprep.assign.losses import segment_resistance
 from geomprep.errors import InputError
 from geomprep.laws import lumped, tube
 from geomprep.model import Basis, FloatArray, Lumped, Network, Origin
@@ -14,7 +15,7 @@ _ORIGINS = (
     Origin(
         "segments.lumped.resistance",
         Basis.DERIVED,
-        "segments.integrals.inverse_fourth_power, blood.viscosity, blood.velocity_profile",
+        "segments.integrals.inverse_fourth_power, segments.friction_shape, blood.viscosity, blood.velocity_profile",
     ),
     Origin("segments.lumped.inertance", Basis.DERIVED, "segments.integrals.inverse_area, blood.density"),
     Origin(
@@ -28,7 +29,7 @@ _ORIGINS = (
 def lump(network: Network) -> tuple[Lumped, tuple[Origin, ...]]:
     """Find the lumped values of every segment.
 
-    R = 2 (z + 2) μ/π ∫ ds/r⁴ and L = ρ ∫ ds/A are exact for a radius linear between stations.
+    R = 2 (z + 2) μ/π · friction shape · ∫ ds/r⁴ and L = ρ ∫ ds/A are exact for a radius linear between stations.
     C = ∫ A/(ρc²) ds with c of each station's own law at the imaged area: exact where the
     distensibility 1/(ρc²) is linear between stations (constant c, constant E h), else of second
     order in the station spacing (:func:`geomprep.laws.lumped.compliance`).
@@ -58,11 +59,17 @@ def lump(network: Network) -> tuple[Lumped, tuple[Origin, ...]]:
     blood, stations = network.blood, network.stations
     distensibility = lumped.distensibility(imaged_wave_speed(network), blood.density)
     values = Lumped(
-        lumped.resistance(network.measures.inverse_fourth_power, blood.viscosity, blood.velocity_profile),
+        segment_resistance(network),
         lumped.inertance(network.measures.inverse_area, blood.density),
         lumped.compliance(stations.distance, stations.radius, distensibility, stations.offsets),
     )
-    return values, _ORIGINS
+    return values, (*_ORIGINS, *_shape_origins(network.segments.friction_shape))
+
+
+def _shape_origins(friction_shape: FloatArray) -> tuple[Origin, ...]:
+    """Where the shapes above 1 come from; 1 is the circle that the stations' areas stand for."""
+    rows = tuple(np.flatnonzero(friction_shape > 1).tolist())
+    return (Origin("segments.friction_shape", Basis.MEASURED, "lumen surface of the input", rows),) if rows else ()
 
 
 def imaged_wave_speed(network: Network) -> FloatArray:

@@ -12,6 +12,7 @@ import numpy.typing as npt
 
 from geomprep.anatomy import NamedPoint, name_segments, read_names
 from geomprep.assign import Ends, coordinates, resolve_ends
+from geomprep.case.image_areas import with_image_areas
 from geomprep.case.replay import RepairRules, repair_rules
 from geomprep.case.sections import Case
 from geomprep.errors import CaseError, OpenQuestions, Question
@@ -155,10 +156,15 @@ def _cut(case: Case, progress: Progress) -> _Cut:
     rules = repair_rules(case)
     joined, records, seen = _joined(case, rules, progress)
     progress("split", 0.5)
-    network = _resampled(case, split(joined.graph))
+    network, measured = with_image_areas(case, _resampled(case, split(joined.graph)))
     unknown = rules.verdicts.unknown(repair.id for repair in joined.repairs)
     return _Cut(
-        network, joined.graph.raw_points, records, (*seen, *joined.findings, *unknown), joined.repairs, rules.records
+        network,
+        joined.graph.raw_points,
+        records,
+        (*seen, *joined.findings, *unknown, *measured),
+        joined.repairs,
+        rules.records,
     )
 
 

@@ -36,6 +36,8 @@ class InputStatement:
         Three letters: where x, y and z grow to.
     voxel : tuple of float, optional
         Voxel edges in metres.
+    lumen_surface, mask : str, optional
+        Paths of a triangulated surface and of a mask of the lumen, relative to the folder of the case file.
     modality, field_of_view, breath, head_rotation : str, optional
     """
 
@@ -48,6 +50,8 @@ class InputStatement:
     size_means: str | None = None
     frame: str | None = None
     voxel: tuple[float, float, float] | None = None
+    lumen_surface: str | None = None
+    mask: str | None = None
     modality: str | None = None
     field_of_view: str | None = None
     breath: str | None = None

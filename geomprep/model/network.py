@@ -6,7 +6,7 @@ stage has run. A stage takes a network and returns a new one (``dataclasses.repl
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 
@@ -107,6 +107,8 @@ class Segments:
     vessel_class, input_id : (s,) uint8 array
     strahler_order, horsfield_order, generation : (s,) int array
         −1 where undefined (on loops, or not reachable from an inlet).
+    friction_shape : (s,) float array
+        Resistance over that of circles of the same areas, 1 or above; ones where it is not given.
     """
 
     id: TextArray
@@ -118,12 +120,15 @@ class Segments:
     strahler_order: IntArray
     horsfield_order: IntArray
     generation: IntArray
+    friction_shape: FloatArray = field(default_factory=lambda: np.empty(0))
 
     def __post_init__(self) -> None:
         """Make the arrays read-only and check that they fit together."""
         put = object.__setattr__
         for name in ("id", "name"):
             put(self, name, texts(name, getattr(self, name)))
+        shape = self.friction_shape if len(self.friction_shape) else np.ones(len(self.id))
+        put(self, "friction_shape", frozen("friction_shape", shape, np.float64))
         for name in ("from_node", "to_node", "strahler_order", "horsfield_order", "generation"):
             put(self, name, frozen(name, getattr(self, name), np.int64))
         for name in ("vessel_class", "input_id"):

@@ -25,16 +25,16 @@ def lumped_faults(flat: Mapping[str, Any]) -> Iterator[Fault]:
     for name, value in (("momentum_factor", momentum_factor(profile)), ("friction_factor", 2.0 * (profile + 2.0))):
         if abs(blood[name] / value - 1.0) > _EXACT:
             yield Fault("steady check", f"blood.{name}", f"{blood[name]:.9g}; the velocity profile gives {value:.9g}")
-    integrals, lumped = flat["segments.integrals"], flat["segments.lumped"]
+    integrals, lumped, shape = flat["segments.integrals"], flat["segments.lumped"], flat["segments"]["friction_shape"]
     expected = {
-        "resistance": resistance(integrals["inverse_fourth_power"], blood["viscosity"], profile),
+        "resistance": shape * resistance(integrals["inverse_fourth_power"], blood["viscosity"], profile),
         "inertance": inertance(integrals["inverse_area"], blood["density"]),
     }
     for name, values in expected.items():
         off = np.flatnonzero(~(np.abs(lumped[name] / values - 1.0) <= _EXACT))
         if off.size:
             row = off[0]
-            message = f"{lumped[name][row]:.9g}; integrals and blood give {values[row]:.9g}"
+            message = f"{lumped[name][row]:.9g}; integrals, friction shapes and blood give {values[row]:.9g}"
             yield Fault("steady check", f"segments.lumped.{name}[{row}]", message)
 
 
