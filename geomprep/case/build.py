@@ -19,6 +19,7 @@ from geomprep.export import ExportContext, ImagingState
 from geomprep.findings import Finding, Severity
 from geomprep.flow import steady_state
 from geomprep.literature import row, rows
+from geomprep.measure import unresolved_finding
 from geomprep.model import Basis, Network, Origin, Repair, SteadyState
 from geomprep.repair import STEPS
 
@@ -98,7 +99,7 @@ def build(
     assigned = assign_parameters(case, drawn)
     step("steady state", 0.8)
     state = steady_state(assigned.network)
-    findings = (*drawn.findings, *assigned.findings)
+    findings = (*drawn.findings, *assigned.findings, *unresolved_finding(assigned.network, state.flow))
     if strict:
         _refuse_left_over(findings, drawn.repairs)
     folder = None if dry_run else Path(output) if output is not None else case.folder / "results"

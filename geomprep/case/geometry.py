@@ -23,6 +23,7 @@ from geomprep.findings import Finding
 from geomprep.measure import (
     Convention,
     ZoneSettings,
+    describe,
     junction_zones,
     junctions,
     measure_segments,
@@ -35,6 +36,9 @@ from geomprep.segments import leave_out_unreached, order_segments, orient, resam
 from geomprep.units import length_factor
 
 __all__ = ["Drawn", "draw_network", "draw_repairs"]
+
+_MOST_OVERLAPS = 20_000
+"""Segments up to which the volumes that vessels share at junctions are measured; beyond, that takes minutes."""
 
 Progress = Callable[[str, float], None]
 
@@ -140,14 +144,16 @@ def _with_ends(case: Case, cut: _Cut, progress: Progress) -> Drawn:
     progress("measure", 0.65)
     network, zones = _trimmed(case, ordered.network)
     network = junctions(measure_segments(network))
-    findings = (*cut.findings, *named.findings, *ends.findings, *ordered.findings, *zones)
+    network, quality = describe(network, _voxel(case))
+    findings = (*cut.findings, *named.findings, *ends.findings, *ordered.findings, *zones, *quality)
     return Drawn(network, ends, cut.inputs, findings, (*cut.repairs, *reached.repairs), cut.settings)
 
 
 def _trimmed(case: Case, network: Network) -> tuple[Network, tuple[Finding, ...]]:
     """Take off what lies inside parents, by the convention of the case."""
     convention = Convention[case.segments.vessels_start_at.upper().replace(" ", "_")]
-    zones = junction_zones(network, ZoneSettings(convention))
+    few = len(network.segments) <= _MOST_OVERLAPS
+    zones = junction_zones(network, ZoneSettings(convention, change_points=False, volumes=few))
     return trimmed(network, zones), zone_findings(zones, network.segments.id.tolist())
 
 

@@ -15,7 +15,17 @@ from geomprep.export.basis import basis_tables
 from geomprep.export.context import ExportContext
 from geomprep.export.texts import CAUTIONS, CONVENTIONS, EQUATIONS, IMAGED, TOLERANCE
 from geomprep.laws.blood import momentum_factor
-from geomprep.model import NODE_ROLES, VESSEL_CLASSES, Field, Network, SteadyState, Walls, field_tables
+from geomprep.model import (
+    NODE_ROLES,
+    PROFILE_KINDS,
+    RESOLUTION_LEVELS,
+    VESSEL_CLASSES,
+    Field,
+    Network,
+    SteadyState,
+    Walls,
+    field_tables,
+)
 from geomprep.units import UCUM
 
 __all__ = ["Flat", "filled_tables"]
@@ -56,6 +66,8 @@ def filled_tables(network: Network, state: SteadyState, context: ExportContext) 
         elif table.type == "object" and not name.startswith("basis") and name != "stations.companion":
             given = {}
         else:
+            continue
+        if given is None:  # a table that this network has no numbers for
             continue
         flat[name] = given if table.type != "object" else _completed(network, table.fields, given)
     flat.update(basis_tables(network, context, flat))
@@ -150,6 +162,16 @@ def _zones(network: Network, state: SteadyState, context: ExportContext) -> Flat
     return {"cut_at_from": none, "cut_at_to": none, "share_inside": none, "kind": kind}
 
 
+def _profile(network: Network, state: SteadyState, context: ExportContext) -> Flat | None:
+    """Forms by name."""
+    return None if network.profiles is None else {"kind": _named(network.profiles.kind, PROFILE_KINDS)}
+
+
+def _resolution(network: Network, state: SteadyState, context: ExportContext) -> Flat | None:
+    """Levels by name."""
+    return None if network.resolution is None else {"level": _named(network.resolution.level, RESOLUTION_LEVELS)}
+
+
 def _junctions(network: Network, state: SteadyState, context: ExportContext) -> Flat:
     """Ends by name."""
     return {} if network.junctions is None else {"end": _named(network.junctions.end, _END_NAMES)}
@@ -209,6 +231,9 @@ _MAKERS: dict[str, Callable[[Network, SteadyState, ExportContext], Any]] = {
     "nodes": _nodes,
     "segments": _segments,
     "segments.zones": _zones,
+    "segments.profile": _profile,
+    "segments.resolution": _resolution,
+    "segments.intervals": lambda network, state, context: None if network.intervals is None else {},
     "segments.lumped": lambda network, state, context: {"at_state": IMAGED},
     "junctions": _junctions,
     "inlets": lambda network, state, context: [_table(row) for row in network.inlets or ()],

@@ -7,6 +7,7 @@ from geomprep.measure.junctions import junctions
 from geomprep.measure.mask_areas import VoxelGrid, mask_areas
 from geomprep.measure.narrowings import narrowings
 from geomprep.measure.profiles import radius_profiles
+from geomprep.measure.quality import describe, unresolved_finding
 from geomprep.measure.resolution import resolution, unresolved_share
 from geomprep.measure.segments import measure_segments
 from geomprep.measure.trim import trimmed
@@ -18,6 +19,7 @@ __all__ = [
     "ZoneSettings",
     "cross_sections",
     "curvature",
+    "describe",
     "intervals",
     "junction_zones",
     "junctions",
@@ -28,6 +30,7 @@ __all__ = [
     "resolution",
     "tortuosity",
     "trimmed",
+    "unresolved_finding",
     "unresolved_share",
     "zone_findings",
 ]

@@ -31,6 +31,7 @@ from geomprep.model import BoolArray, FloatArray, IntArray, Network, Stations, U
 
 __all__ = ["Convention", "JunctionKind", "JunctionZones", "ZoneSettings", "junction_zones", "zone_findings"]
 
+_LISTED = 100
 _LEAST_SHARE = 0.2  # of a segment inside its parents, above which it is flagged
 _WINDOW = 10.0  # radii of the junction that are searched for a change point
 _PLACES = 49  # samples in that window
@@ -57,12 +58,18 @@ class ZoneSettings:
         Forks joined by a segment not longer than this many radii are one junction.
     steepest_taper : float
         Fall of ln r over one radius that marks a transition, for the change point (a judgement).
+    change_points : bool
+        Whether change points are looked for when vessels are cut by another convention.
+    volumes : bool
+        Whether overlaps are measured: by far the slowest part of large networks.
     """
 
     convention: Convention = Convention.LUMEN_EXIT
     parent: ParentRule = field(default_factory=ParentRule)
     group_within: float = 1.0
     steepest_taper: float = 0.05
+    change_points: bool = True
+    volumes: bool = True
 
     def __post_init__(self) -> None:
         if not 0 <= self.group_within < np.inf:
@@ -107,12 +114,14 @@ class JunctionZones:
     area : (t,) float array
         Lumen area beyond the junction, m².
     distance : (t, 3) float array
-        Distance from the node at which the vessel starts, m, by each :class:`Convention`.
+        Distance from the node at which the vessel starts, m, by each :class:`Convention`; not a number by change
+        point where none was looked for.
     cut : (t,) float array
         Distance cut off, m: that of the convention, shortened where a segment would lose more than half.
     overlap : (t,) float array
         Volume of this end's tube that lies in the parent, and its share of what it has in common with the
-        other branches, m³. Volumes of all segments less all overlaps are the volume of the union.
+        other branches, m³. Volumes of all segments less all overlaps are the volume of the union. Not a number,
+        like `held_volume`, where volumes were not asked for.
     inverse_fourth_power_cut : (t,) float array
         ∫ds/r⁴ of the stretch cut off, 1/m³.
     share_inside : (s,) float array
@@ -210,12 +219,13 @@ def junction_zones(network: Network, settings: ZoneSettings | None = None) -> Ju
     kind, is_parent = parents(offsets, radius, direction, settings.parent)
     pairs = end_pairs(offsets, kind, is_parent)
     exits = exit_distances(axes, ends, pairs)
-    changes = np.zeros(len(ends))
-    changes[~is_parent] = _change_points(axes, ends.rows(~is_parent), settings)
+    changes = np.where(is_parent, 0.0, np.nan)
+    if settings.change_points or settings.convention is Convention.CHANGE_POINT:
+        changes[~is_parent] = _change_points(axes, ends.rows(~is_parent), settings)
     distance = np.stack((0 * exits, exits, changes), axis=1)
     cut, scale = _cuts(ends, distance[:, settings.convention], length)
     shares, totals = _integrals_to(stations, ends, cut)
-    overlap = overlap_volumes(axes, ends, pairs, exits)
+    overlap = overlap_volumes(axes, ends, pairs, exits) if settings.volumes else np.full(len(ends), np.nan)
     inside = _summed(exits, ends.segment, len(length)) / length
     gone = _summed(shares[:, 1], ends.segment, len(length))
     return JunctionZones(
@@ -257,30 +267,51 @@ def zone_findings(zones: JunctionZones, ids: Sequence[str]) -> tuple[Finding, ..
     Returns
     -------
     tuple of Finding
-        In the order of segments: ``inside its parent`` (warning), then ``lumped link`` (note).
+        ``inside its parent`` (warning) and ``lumped link`` (note) by segment, a hundred of each at most,
+        then ``junction volume`` (note).
 
     Examples
     --------
     >>> from types import SimpleNamespace
     >>> found = SimpleNamespace(mostly_inside=np.array([True]), lumped_link=np.array([False]))
-    >>> found.share_inside = np.array([0.43])
+    >>> found.share_inside, found.held_volume = np.array([0.43]), np.zeros(0)
     >>> print(zone_findings(found, ["s1"])[0].message)
     43 % of the length lies within the lumen of its parents (limit 20 %): its resistance depends on the convention
     """
-    found = []
-    for row in np.flatnonzero(zones.mostly_inside | zones.lumped_link).tolist():
-        share = float(zones.share_inside[row])
-        if zones.mostly_inside[row]:
-            text = f"{100 * share:.0f} % of the length lies within the lumen of its parents (limit 20 %): "
-            text += "its resistance depends on the convention"
-            found.append(Finding("inside its parent", Severity.WARNING, text, ids[row], None, share, _LEAST_SHARE))
-        if zones.lumped_link[row]:
-            text = (
-                f"{1e3 * zones.length_left[row]:.3g} mm are left between junctions: a link with a resistance, no vessel"
-            )
-            left = float(zones.length_left[row])
-            found.append(Finding("lumped link", Severity.NOTE, text, ids[row], value=left, unit="m"))
-    return tuple(found)
+    inside, links = np.flatnonzero(zones.mostly_inside), np.flatnonzero(zones.lumped_link)
+    found = [_inside_finding(zones, ids, row) for row in inside[:_LISTED].tolist()]
+    if len(inside) > _LISTED:
+        text = f"{len(inside) - _LISTED} segments more lie within their parents for more than 20 % of their length"
+        found.append(Finding("inside its parent", Severity.WARNING, text, value=float(len(inside) - _LISTED)))
+    found += [_link_finding(zones, ids, row) for row in links[:_LISTED].tolist()]
+    if len(links) > _LISTED:
+        text = f"{len(links) - _LISTED} segments more are links with a resistance, no vessels"
+        found.append(Finding("lumped link", Severity.NOTE, text, value=float(len(links) - _LISTED)))
+    return (*found, *_volume_finding(zones))
+
+
+def _inside_finding(zones: JunctionZones, ids: Sequence[str], row: int) -> Finding:
+    """One segment that lies within its parents for more than a fifth."""
+    share = float(zones.share_inside[row])
+    text = f"{100 * share:.0f} % of the length lies within the lumen of its parents (limit 20 %): "
+    text += "its resistance depends on the convention"
+    return Finding("inside its parent", Severity.WARNING, text, ids[row], None, share, _LEAST_SHARE)
+
+
+def _link_finding(zones: JunctionZones, ids: Sequence[str], row: int) -> Finding:
+    """One segment of which only a link is left."""
+    left = float(zones.length_left[row])
+    text = f"{1e3 * left:.3g} mm are left between junctions: a link with a resistance, no vessel"
+    return Finding("lumped link", Severity.NOTE, text, ids[row], value=left, unit="m")
+
+
+def _volume_finding(zones: JunctionZones) -> tuple[Finding, ...]:
+    """What the junctions hold beside the segments, where that was measured."""
+    if len(zones.held_volume) == 0 or np.isnan(zones.held_volume).any():
+        return ()
+    held = float(zones.held_volume.sum())
+    text = f"junctions hold {1e9 * held:.4g} mm³ that no segment holds; they belong to the volume of the lumen"
+    return (Finding("junction volume", Severity.NOTE, text, value=held, unit="m3"),)
 
 
 def _summed(values: FloatArray, owner: IntArray, count: int) -> FloatArray:

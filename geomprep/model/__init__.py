@@ -22,12 +22,21 @@ from geomprep.model.network import (
 )
 from geomprep.model.parameters import Blood, Inlet, Outlet, Surroundings, TubeLaw, end_arrays
 from geomprep.model.point_graph import PointGraph
+from geomprep.model.quality import (
+    PROFILE_KINDS,
+    RESOLUTION_LEVELS,
+    SegmentIntervals,
+    SegmentProfiles,
+    SegmentResolution,
+)
 from geomprep.model.states import SteadyState
 
 __all__ = [
     "BASIS_NAMES",
     "FIXED_BY_FORMAT",
     "NODE_ROLES",
+    "PROFILE_KINDS",
+    "RESOLUTION_LEVELS",
     "VESSEL_CLASSES",
     "Basis",
     "Blood",
@@ -50,6 +59,9 @@ __all__ = [
     "Outlet",
     "PointGraph",
     "Repair",
+    "SegmentIntervals",
+    "SegmentProfiles",
+    "SegmentResolution",
     "Segments",
     "Stations",
     "SteadyState",

@@ -59,7 +59,9 @@ def test_row_numbers_refer_to_a_table(row: Field) -> None:
 def test_attributes_exist_in_the_containers() -> None:
     holders = {
         "nodes": model.Nodes, "segments": model.Segments, "stations": model.Stations, "measures": model.Measures,
-        "lumped": model.Lumped, "walls": model.Walls, "junctions": model.Junctions, "cuts": model.Cuts, "blood": model.Blood,
+        "lumped": model.Lumped, "walls": model.Walls, "junctions": model.Junctions, "cuts": model.Cuts,
+        "profiles": model.SegmentProfiles, "resolution": model.SegmentResolution,
+        "intervals": model.SegmentIntervals, "blood": model.Blood,
         "inlets": model.Inlet, "outlets": model.Outlet, "surroundings": model.Surroundings,
     }  # fmt: skip
     known = {f"{name}.{item.name}" for name, kind in holders.items() for item in dataclasses.fields(kind)}

@@ -1,0 +1,63 @@
+"""What a network says of how well its geometry is known."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+
+from geomprep.measure import describe, measure_segments
+from geomprep.measure.quality import unresolved_finding
+from geomprep.model import Lumped, Network, Nodes, Segments, Stations
+
+
+def tube(radius: np.ndarray, length: float = 80e-3) -> Network:
+    """One straight segment."""
+    along = np.linspace(0, length, len(radius))
+    position = np.stack((along, 0 * along, 0 * along), axis=1)
+    zero = np.zeros(1, int)
+    segments = Segments(["s"], [""], zero, zero + 1, zero, zero, zero, zero, zero)
+    stations = Stations([0, len(radius)], along, position, radius, np.zeros(len(radius)))
+    nodes = Nodes(["i", "j"], position[[0, -1]], np.zeros(2), np.zeros(2), np.arange(2))
+    return measure_segments(Network(nodes, segments, stations))
+
+
+def test_a_taper_and_what_one_radius_makes_of_it() -> None:
+    """2 to 1 mm, linear in r: R from one radius of equal volume over the true one, by hand.
+
+    Mean of r² is (a² + ab + b²)/3 = 7/3, mean of r⁻⁴ is (a² + ab + b²)/(3a³b³) = 7/24: ratio (7/3)⁻² / (7/24) = 0.6297.
+    """
+    network, findings = describe(tube(np.linspace(2e-3, 1e-3, 161)), None)
+    assert network.profiles.ratio_for_volume == pytest.approx([(7 / 3) ** -2 / (7 / 24)], rel=1e-4)
+    assert [finding.kind for finding in findings] == ["one radius"]
+    assert f"{1 / 0.6297:.3g} times" in findings[0].message
+    assert network.resolution is None
+    assert network.intervals is None
+
+
+def test_a_cylinder_needs_no_finding() -> None:
+    network, findings = describe(tube(np.full(81, 2e-3)), 0.25e-3)
+    assert findings == ()
+    assert network.resolution.diameter_in_voxels == pytest.approx([16.0])
+    measures, spread = network.measures, network.intervals
+    assert (spread.inverse_fourth_power_low < measures.inverse_fourth_power).all()
+    assert (measures.inverse_fourth_power < spread.inverse_fourth_power_high).all()
+    assert spread.confidence == pytest.approx(0.9)
+
+
+def test_a_vessel_of_three_voxels_is_not_resolved() -> None:
+    network, findings = describe(tube(np.full(81, 0.75e-3)), 0.5e-3)
+    assert network.resolution.level.tolist() == [2]
+    assert network.resolution.share_not_resolved == pytest.approx([1.0])
+    assert "not resolved" in findings[0].message
+    lumped = Lumped(np.array([1e9]), np.array([1e6]), np.array([1e-12]))
+    import dataclasses
+
+    (said,) = unresolved_finding(dataclasses.replace(network, lumped=lumped), np.array([1e-6]))
+    assert said.message.startswith("100 % of the friction")
+
+
+def test_large_networks_are_not_fitted() -> None:
+    network, _ = describe(tube(np.full(200_001, 2e-3)), 0.25e-3)
+    assert network.profiles is None
+    assert network.intervals is None
+    assert network.resolution is not None
