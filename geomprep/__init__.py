@@ -15,6 +15,7 @@ _PUBLIC: dict[str, str] = {
     "GeomprepError": "geomprep.errors",
     "Network": "geomprep.model",
     "build": "geomprep.case.build",
+    "compare": "geomprep.case.compare",
     "copy_sample": "geomprep.case.samples",
     "inspect": "geomprep.case.inspect",
     "new_case": "geomprep.case.new",

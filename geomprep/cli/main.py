@@ -47,6 +47,10 @@ COMMANDS: Final[dict[str, tuple[str, str]]] = {
         "record a decision on a repair, take one back, or list them",
         'geomprep decide case.toml gap-1f3a join --because "one vessel on the source image"',
     ),
+    "compare": (
+        "say what differs between two networks, and what it does to resistance",
+        "geomprep compare before/results after/results --voxel '0.6 mm'",
+    ),
     "sources": ("list the published numbers and relations, or print one", "geomprep sources wave-speed-reymond-2009"),
 }
 """Subcommand -> what it does, an example."""
