@@ -167,6 +167,7 @@ _STEPS = (
     "join points and lines within each vessel class",
     *(row.does for row in STEPS),
     "split into segments between junctions and open ends",
+    "take areas of stations from lumen surfaces and masks, where the case states them",
     "turn segments along a linear flow from inlets to outlets",
     "take off what lies inside parents, by the convention of the case",
     "measure segments and junctions",

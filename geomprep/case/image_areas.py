@@ -8,7 +8,7 @@ from typing import Final
 
 import numpy as np
 
-from geomprep.case.image_findings import area_findings, shape_finding
+from geomprep.case.image_findings import area_findings, coarse_findings, shape_finding
 from geomprep.case.sections import Case
 from geomprep.curves import arc_length, line_sums, piece_integrals, pieces
 from geomprep.errors import CaseError
@@ -16,7 +16,7 @@ from geomprep.files import MaskContents, read_mask, read_surface
 from geomprep.files.frames import direction
 from geomprep.findings import Finding
 from geomprep.laws.shapes import friction_shape_from_moment
-from geomprep.measure import VoxelGrid, cross_sections, mask_areas
+from geomprep.measure import Convention, VoxelGrid, cross_sections, junction_zones, mask_areas
 from geomprep.measure.cross_sections import CutMark
 from geomprep.model import Basis, BoolArray, FloatArray, IntArray, Network, Stations, TextArray
 from geomprep.units import length_factor
@@ -46,12 +46,16 @@ _MARK_WORDS: Final = {
 
 @dataclass(frozen=True, eq=False)
 class _Lines:
-    """Stations of one input: their rows among all, and its lines alone."""
+    """Stations of one input: their rows among all, and its lines alone.
+
+    `mouth` says at the two ends of each line how far from there its lumen is not all its own, m.
+    """
 
     rows: IntArray
     offsets: IntArray
     position: FloatArray
     radius: FloatArray
+    mouth: FloatArray
 
 
 @dataclass(frozen=True, eq=False)
@@ -103,8 +107,11 @@ def with_image_areas(case: Case, network: Network) -> tuple[Network, tuple[Findi
     stations = network.stations
     radius, shape = stations.radius.copy(), np.full(len(stations), np.nan)
     measured, findings = np.zeros(len(stations), np.bool_), list[Finding]()
+    mouth = (
+        _mouths(network) if any(statement.mask for statement in case.inputs) else np.zeros((len(network.segments), 2))
+    )
     for number, statement in enumerate(case.inputs):
-        lines = _lines_of(network, number)
+        lines = _lines_of(network, number, mouth)
         for key, measure in _MEASURES.items():
             if getattr(statement, key) is None or len(lines.rows) == 0:
                 continue
@@ -126,13 +133,25 @@ def with_image_areas(case: Case, network: Network) -> tuple[Network, tuple[Findi
     return replace(network, segments=segments, stations=stations), tuple(findings)
 
 
-def _lines_of(network: Network, number: int) -> _Lines:
+def _lines_of(network: Network, number: int, mouth: FloatArray) -> _Lines:
     """Stations of the segments of one input."""
     own = network.segments.input_id == number
     counts = np.diff(network.stations.offsets)
     rows = np.flatnonzero(np.repeat(own, counts))
     offsets = np.concatenate(([0], np.cumsum(counts[own])))
-    return _Lines(rows, offsets, network.stations.position[rows], network.stations.radius[rows])
+    return _Lines(rows, offsets, network.stations.position[rows], network.stations.radius[rows], mouth[own])
+
+
+def _mouths(network: Network) -> FloatArray:
+    """How far from its ends each segment shares its lumen with a parent, as drawn, m.
+
+    Its axis leaves the parent's lumen first; at 45° its inner side follows one radius of its own later.
+    """
+    zones = junction_zones(network)
+    reach = zones.distance[:, Convention.LUMEN_EXIT]
+    mouth = np.zeros((len(network.segments), 2))
+    mouth[zones.segment, zones.end] = reach + np.where(reach > 0, np.sqrt(zones.area / np.pi), 0.0)
+    return mouth
 
 
 def _of_surface(case: Case, number: int, lines: _Lines) -> _Measured:
@@ -158,7 +177,7 @@ def _of_mask(case: Case, number: int, lines: _Lines) -> _Measured:
     """Areas of voxels; a mask says nothing of outlines here."""
     mask = read_mask(case.folder / str(case.inputs[number].mask))
     grid = _grid(case, number, mask)
-    (place, near), radius = _drawn_apart(lines, grid), lines.radius
+    (place, near, shared), radius = _drawn_apart(lines, grid), lines.radius
     found = mask_areas(mask.inside, grid, place, lines.offsets, radius, _FARTHEST * float(radius.max()))
     depth = _depth(grid, mask, lines.position)
     if found.empty.all() or (depth < 0).all():
@@ -166,14 +185,16 @@ def _of_mask(case: Case, number: int, lines: _Lines) -> _Measured:
     measured = np.sqrt(found.area / np.pi)
     unlike, words = _unlike("mask", measured, radius)
     reasons = {
+        "where the vessel leaves its parent": shared,
         "within half a voxel of other lines": near,
         "without voxels": found.empty,
-        "next to a station without voxels": _beside(found.empty & ~near, lines.offsets),
+        "next to a station without voxels": _beside(found.empty & ~near & ~shared, lines.offsets),
         "within a radius of the border of the mask": depth < radius,
         words: unlike,
     }
     why = _first_that_holds(reasons)
-    return _Measured(measured, np.full(len(why), np.nan), why, mask.sha256, mask.findings)
+    coarse = coarse_findings(2 * measured[why == ""] / float(np.prod(grid.spacing)) ** (1 / 3))
+    return _Measured(measured, np.full(len(why), np.nan), why, mask.sha256, (*mask.findings, *coarse))
 
 
 _MEASURES: Final[dict[str, Callable[[Case, int, _Lines], _Measured]]] = {
@@ -218,28 +239,30 @@ def _grid(case: Case, number: int, mask: MaskContents) -> VoxelGrid:
     return VoxelGrid(turn @ mask.origin * factor, mask.spacing * factor, turn @ mask.directions)
 
 
-def _drawn_apart(lines: _Lines, grid: VoxelGrid) -> tuple[FloatArray, BoolArray]:
-    """Stations with ends that meet others moved inwards by half a voxel, and those that lie nearer to such an end.
+def _drawn_apart(lines: _Lines, grid: VoxelGrid) -> tuple[FloatArray, BoolArray, BoolArray]:
+    """Stations with ends that meet others moved inwards by half a voxel; those nearer to such an end; those in a mouth.
 
     A voxel astride the place where lines meet goes to one of them, whose share of it ends there; so much
     of the other line would seem empty.
     """
-    place, near, row = lines.position.copy(), np.zeros(len(lines.rows), np.bool_), np.arange(len(lines.rows))
+    place, row = lines.position.copy(), np.arange(len(lines.rows))
+    near, shared = np.zeros((2, len(lines.rows)), np.bool_)
     first, last = lines.offsets[:-1], lines.offsets[1:] - 1
     line = np.repeat(np.arange(len(first)), np.diff(lines.offsets))
     along = arc_length(lines.position, lines.offsets)
     _, same, count = np.unique(lines.position[np.r_[first, last]], axis=0, return_inverse=True, return_counts=True)
     meets = (count[same.ravel()] > 1).reshape(2, -1)
-    for end, towards, others in ((first, -1, meets[0]), (last, 1, meets[1])):
+    for side, end, towards, others in ((0, first, -1, meets[0]), (1, last, 1, meets[1])):
         step = lines.position[end - towards] - lines.position[end]
         length = np.linalg.norm(step, axis=1)
         half = others * np.linalg.norm((step / length[:, None]) @ grid.directions * grid.spacing, axis=1) / 2
         place[end] += np.minimum(half / length, _MOST_OF_A_STEP)[:, None] * step
         away = np.abs(along - along[end][line])
         border = 0.5 * (away + away[np.clip(row + towards, first[line], last[line])])
+        shared |= border < lines.mouth[:, side][line]
         border[end] = _MOST_OF_A_STEP * length
         near |= border < half[line]
-    return place, near
+    return place, near, shared
 
 
 def _beside(marked: BoolArray, offsets: IntArray) -> BoolArray:

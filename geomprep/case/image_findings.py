@@ -11,9 +11,11 @@ from geomprep.findings import Finding, Severity
 from geomprep.model import BoolArray, FloatArray, IntArray, Network, TextArray
 from geomprep.units import format_quantity
 
-__all__ = ["area_findings", "shape_finding"]
+__all__ = ["area_findings", "coarse_findings", "shape_finding"]
 
 _SHOWN: Final = 3
+_FEW_ACROSS: Final = 4.0
+"""Voxels per diameter below which a lumen is not resolved."""
 _FAR_IN_THE_MIDDLE: Final = 1.25
 """Ratio of the median measured radius to the stated one from which the stated sizes are doubtful."""
 
@@ -76,6 +78,35 @@ def _differences(network: Network, key: str, rows: IntArray, radius: FloatArray)
         position=(x, y, z),
         value=float(ratio[largest[0]]),
     )
+
+
+def coarse_findings(across: FloatArray) -> tuple[Finding, ...]:
+    """Say how many measured stations are too few voxels across for their areas to be smooth.
+
+    Parameters
+    ----------
+    across : (t,) float array
+        Voxels per diameter.
+
+    Returns
+    -------
+    tuple of Finding
+        Empty where all are resolved.
+
+    Examples
+    --------
+    >>> coarse_findings(np.array([2.5, 8.0]))[0].message[:67]
+    '1 of 2 stations measured by the mask are less than 4 voxels across:'
+    """
+    few = int(np.count_nonzero(across < _FEW_ACROSS))
+    message = (
+        f"{few} of {len(across)} stations measured by the mask are less than {_FEW_ACROSS:g} voxels across: the scatter of "
+        "their areas makes resistances too high; state a finer mask, or leave it out there"
+    )
+    coarse = Finding(
+        "mask too coarse", Severity.WARNING, message, value=float(across.min(initial=np.inf)), limit=_FEW_ACROSS
+    )
+    return (coarse,) if few else ()
 
 
 def shape_finding(friction: FloatArray, known: BoolArray) -> Finding:

@@ -266,6 +266,7 @@ def test_lines_that_meet_share_the_voxels_between_them(cuts: list[int]) -> None:
         path = one_vein(Path(folder), 'mask = "mask.vti"')
         mask_file(Path(folder) / "mask.vti", inside, origin, 0.5)
         network, findings = with_image_areas(read_case(path), chain([0, *sorted(cuts), 60]))
+    assert len(findings) == 2  # sixteen voxels by eight: none is too coarse
     assert f"{61 + len(cuts)} of {61 + len(cuts)} stations" in findings[0].message
     np.testing.assert_allclose(network.stations.area, inside[:, :, 0].sum() / 4 * 1e-6, rtol=1e-6)
 
@@ -276,7 +277,8 @@ def test_stations_nearer_than_half_a_voxel_to_another_line_are_left_alone(tmp_pa
     mask_file(tmp_path / "mask.vti", inside, origin, 2.0)
     path = one_vein(tmp_path, 'mask = "mask.vti"')
     network, findings = with_image_areas(read_case(path), chain([0, 20, 40, 60]))
-    assert "8 within half a voxel of other lines" in findings[0].message
+    assert [finding.kind for finding in findings] == ["mask too coarse", "areas from mask", "radii of mask and lines"]
+    assert "8 within half a voxel of other lines" in findings[1].message
     kept = np.flatnonzero(network.stations.radius == SHORT * 1e-3).tolist()
     assert kept == [19, 20, 21, 22, 40, 41, 42, 43]  # 19 and 20 mm, 20 and 21 mm, …
     np.testing.assert_allclose(np.delete(network.stations.area, kept), inside[:, :, 0].sum() * 4e-6, rtol=1e-6)
