@@ -9,6 +9,7 @@ from enum import IntEnum
 import numpy as np
 from scipy.sparse import coo_array
 from scipy.sparse.csgraph import connected_components
+from scipy.special import ndtr, ndtri
 
 from geomprep.measure.alongside import Cells, Nearest, Reach, cells, nearest, shared_pairs
 from geomprep.measure.comparison_settings import ComparisonSettings
@@ -142,7 +143,7 @@ def compare_vessels(first: Vessels, second: Vessels, settings: ComparisonSetting
         np.column_stack([function(side, groups) for side in sides]) for function in (_length, _shared, _line_integral)
     )
     radius = np.column_stack([_shared_radius(side, groups) for side in sides])
-    local, place = _local(sides, groups)
+    seen = _seen(sides)
     found = Comparison(
         group=(sides[0].group, sides[1].group),
         changes=np.zeros((groups, len(Change)), np.bool_),
@@ -150,10 +151,11 @@ def compare_vessels(first: Vessels, second: Vessels, settings: ComparisonSetting
         shared=shared,
         radius=radius,
         inverse_fourth_power=whole,
-        local=local,
-        place=place,
+        local=_extremes(seen, groups),
+        place=seen.middle[_most_or_middle(np.abs(np.nan_to_num(seen.change)), seen.group, groups)],
     )
     _mark(found, sides, settings)
+    found.changes[:, [Change.WIDER, Change.NARROWER]] |= _beyond(seen, groups, settings)
     return found
 
 
@@ -248,22 +250,51 @@ def local_changes(cut: Cells, along: Nearest) -> FloatArray:
     return np.where(met & (count >= 3), (total[high] - total[low]) / np.maximum(count, 1.0), np.nan)
 
 
-def _local(sides: tuple[_Side, _Side], groups: int) -> tuple[FloatArray, FloatArray]:
-    """Least and largest local change of each group seen from both sides, and the place of the larger of the two."""
-    group = np.concatenate([side.group[side.cells.segment] for side in sides])
-    value = np.concatenate([side.sign * local_changes(side.cells, side.along) for side in sides])
-    middle = np.concatenate([side.cells.middle for side in sides])
-    seen = np.isfinite(value)
+@dataclass(frozen=True, eq=False)
+class _Seen:
+    """Cells of both networks: group, ln(second radius/first), mean of both radii (NaN where not shared), middle."""
+
+    group: IntArray
+    change: FloatArray
+    radius: FloatArray
+    middle: FloatArray
+
+
+def _seen(sides: tuple[_Side, _Side]) -> _Seen:
+    """Local changes seen from both sides."""
+    return _Seen(
+        group=np.concatenate([side.group[side.cells.segment] for side in sides]),
+        change=np.concatenate([side.sign * local_changes(side.cells, side.along) for side in sides]),
+        radius=np.concatenate([0.5 * (side.cells.radius + side.along.radius) for side in sides]),
+        middle=np.concatenate([side.cells.middle for side in sides]),
+    )
+
+
+def _extremes(seen: _Seen, groups: int) -> FloatArray:
+    """Least and largest local change of each group; NaN where there is none."""
+    known = np.flatnonzero(np.isfinite(seen.change))
     local = np.full((groups, 2), np.nan)
-    if seen.any():
-        rows = np.flatnonzero(seen)[np.lexsort((value[seen], group[seen]))]
-        starts = np.flatnonzero(np.diff(group[rows], prepend=-1))
+    if known.size:
+        rows = known[np.lexsort((seen.change[known], seen.group[known]))]
+        starts = np.flatnonzero(np.diff(seen.group[rows], prepend=-1))
         ends = np.append(starts[1:], len(rows)) - 1
-        local[group[rows[starts]]] = np.column_stack((value[rows[starts]], value[rows[ends]]))
-    size = np.where(seen, np.abs(value), 0.0)
-    weight = _most_or_middle(size, group, groups)
-    place = middle[weight]
-    return local, place
+        local[seen.group[rows[starts]]] = np.column_stack((seen.change[rows[starts]], seen.change[rows[ends]]))
+    return local
+
+
+def _beyond(seen: _Seen, groups: int, settings: ComparisonSettings) -> BoolArray:
+    """Whether a group is somewhere wider, and somewhere narrower, than limit and noise, (g, 2).
+
+    The longer a vessel, the more places have a chance to differ by noise: the factor of the noise
+    rises so that the chance for the whole vessel stays that of a single place (Bonferroni's bound).
+    """
+    known = np.isfinite(seen.change)
+    places = np.bincount(seen.group[known], minlength=groups) / (2 * (2 * _AROUND + 1))
+    factor = -ndtri(ndtr(-settings.noise_factor) / np.maximum(places, 1.0))
+    noise = factor[seen.group] * math.sqrt(2) * settings.radius_noise / seen.radius
+    limit = np.maximum(math.log1p(settings.local_change), noise)
+    beyond = [known & (sign * seen.change > limit) for sign in (1.0, -1.0)]
+    return np.column_stack([np.bincount(seen.group[each], minlength=groups) > 0 for each in beyond])
 
 
 def _most_or_middle(size: FloatArray, group: IntArray, groups: int) -> IntArray:
@@ -292,9 +323,8 @@ def _mark(found: Comparison, sides: tuple[_Side, _Side], settings: ComparisonSet
     apart = (found.length - found.shared > limit[:, None]).all(axis=1)
     put[:, Change.REROUTED] = both & apart
     whole = np.log(found.radius[:, 1] / found.radius[:, 0])
-    wide, narrow = _radius_limits(mean_radius, settings)
-    put[:, Change.WIDER] = both & ((whole > wide) | (found.local[:, 1] > narrow))
-    put[:, Change.NARROWER] = both & ((whole < -wide) | (found.local[:, 0] < -narrow))
+    wide = _radius_limit(mean_radius, settings)
+    put[:, Change.WIDER], put[:, Change.NARROWER] = both & (whole > wide), both & (whole < -wide)
     put[:, Change.RENAMED] = both & _other_names(sides, len(found))
 
 
@@ -312,11 +342,10 @@ def _length_limit(found: Comparison, mean_radius: FloatArray, settings: Comparis
     return limit
 
 
-def _radius_limits(mean_radius: FloatArray, settings: ComparisonSettings) -> tuple[FloatArray, FloatArray]:
-    """Logarithm of the ratio of radii above which a vessel has changed as a whole, and locally."""
+def _radius_limit(mean_radius: FloatArray, settings: ComparisonSettings) -> FloatArray:
+    """Logarithm of the ratio of radii above which a vessel has changed as a whole."""
     noise = settings.noise_factor * math.sqrt(2) * settings.radius_noise / mean_radius
-    whole, local = (np.maximum(math.log1p(limit), noise) for limit in (settings.radius_change, settings.local_change))
-    return whole, local
+    return np.maximum(math.log1p(settings.radius_change), noise)
 
 
 def _other_names(sides: tuple[_Side, _Side], groups: int) -> BoolArray:

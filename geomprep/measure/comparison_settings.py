@@ -34,6 +34,7 @@ class ComparisonSettings:
     radius_change, local_change : float
         Relative: of the radius of equal resistance, and of the radius averaged over five cells.
     noise_factor : float
+        For changes at one place it rises with the number of places.
     voxel : float, optional
         Longest edge, m; two axes less than that apart are one vessel.
     voxel_fraction : float
