@@ -236,6 +236,9 @@ _MAKERS: dict[str, Callable[[Network, SteadyState, ExportContext], Any]] = {
     "segments.intervals": lambda network, state, context: None if network.intervals is None else {},
     "segments.lumped": lambda network, state, context: {"at_state": IMAGED},
     "junctions": _junctions,
+    "narrowings": lambda network, state, context: (
+        None if network.narrowings is None else [_table(row) for row in network.narrowings]
+    ),
     "inlets": lambda network, state, context: [_table(row) for row in network.inlets or ()],
     "outlets": lambda network, state, context: [_table(row) for row in network.outlets or ()],
     "steady_check": _steady_check,

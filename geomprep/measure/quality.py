@@ -7,16 +7,18 @@ import dataclasses
 import numpy as np
 
 from geomprep.findings import Finding, Severity
+from geomprep.measure.narrowings import Narrowings, narrowings
 from geomprep.measure.profiles import radius_profiles
 from geomprep.measure.resolution import resolution, resolution_findings, unresolved_share
 from geomprep.measure.uncertainty import intervals
-from geomprep.model import FloatArray, Network, SegmentIntervals, SegmentProfiles, SegmentResolution
+from geomprep.model import FloatArray, Narrowing, Network, SegmentIntervals, SegmentProfiles, SegmentResolution
 
 __all__ = ["describe", "unresolved_finding"]
 
 _LARGEST = 200_000
 _LISTED = 20
 _ONE_RADIUS = 0.05
+_ARTERY = 1
 
 
 def describe(network: Network, voxel: float | None) -> tuple[Network, tuple[Finding, ...]]:
@@ -32,8 +34,8 @@ def describe(network: Network, voxel: float | None) -> tuple[Network, tuple[Find
     Returns
     -------
     Network
-        With `profiles` filled up to 200,000 stations; above, fitting takes longer than all else. `resolution` and,
-        up to the same size, `intervals` are filled where the voxel is known.
+        With `profiles` and `narrowings` filled up to 200,000 stations; above, fitting takes longer than all else.
+        `resolution` and, up to the same size, `intervals` are filled where the voxel is known.
     findings : tuple of Finding
     """
     if len(network.segments) == 0:
@@ -42,6 +44,8 @@ def describe(network: Network, voxel: float | None) -> tuple[Network, tuple[Find
     few = len(network.stations) <= _LARGEST
     if few:
         network, findings = _with_profiles(network)
+        network, more = _with_narrowings(network)
+        findings += more
     if voxel is not None:
         network, more = _with_resolution(network, voxel, few)
         findings += more
@@ -67,6 +71,51 @@ def _with_profiles(network: Network) -> tuple[Network, tuple[Finding, ...]]:
     where = str(network.segments.id[worst])
     finding = Finding("one radius", Severity.NOTE, message, where, value=float(len(wrong)), limit=_ONE_RADIUS)
     return dataclasses.replace(network, profiles=table), (finding,)
+
+
+def _with_narrowings(network: Network) -> tuple[Network, tuple[Finding, ...]]:
+    """Narrowings and widenings, and the strongest of those that can be told."""
+    stations = network.stations
+    arterial = network.segments.vessel_class == _ARTERY
+    found = narrowings(stations.distance, stations.radius, stations.offsets, arterial=arterial)
+    rows = tuple(_narrowing(found, row) for row in range(len(found.segment)))
+    told = [row for row in rows if row.focal == "focal" or row.kind == "narrowing"]
+    told.sort(key=lambda row: -row.degree_by_diameter)
+    return dataclasses.replace(network, narrowings=rows), tuple(_lesion(network, row) for row in told[:_LISTED])
+
+
+def _narrowing(found: Narrowings, row: int) -> Narrowing:
+    """One row of the kernel's columns."""
+    plain = {name: float(getattr(found, name)[row]) for name in _PLAIN}
+    distal, original = (float(getattr(found, name)[row]) for name in ("against_distal", "against_original"))
+    return Narrowing(
+        segment=int(found.segment[row]),
+        kind="widening" if found.widening[row] else "narrowing",
+        focal="focal" if found.focal[row] else "cannot be told",
+        against_distal=_or_none(distal),
+        against_original=_or_none(original),
+        **plain,
+    )
+
+
+_PLAIN = ("start", "end", "place", "radius", "reference_radius", "degree_by_diameter", "degree_by_area")
+
+
+def _or_none(value: float) -> float | None:
+    """None for what is no number."""
+    return None if np.isnan(value) else value
+
+
+def _lesion(network: Network, row: Narrowing) -> Finding:
+    """One narrowing or widening."""
+    name = str(network.segments.name[row.segment]) or "a segment without a name"
+    degrees = f"{100 * row.degree_by_diameter:.0f} % by diameter ({100 * row.degree_by_area:.0f} % by area)"
+    size = f"{2e3 * row.radius:.3g} mm where {2e3 * row.reference_radius:.3g} mm are expected"
+    place = f"{1e3 * (row.end - row.start):.3g} mm long, {1e3 * row.place:.4g} mm along"
+    doubt = "" if row.focal == "focal" else "; cannot be told from a vessel that is narrow by nature here"
+    message = f"{name}: {row.kind} of {degrees}, {size}, {place}{doubt}"
+    where = str(network.segments.id[row.segment])
+    return Finding(row.kind, Severity.NOTE, message, where, value=row.degree_by_diameter)
 
 
 def _with_resolution(network: Network, voxel: float, few: bool) -> tuple[Network, tuple[Finding, ...]]:

@@ -25,6 +25,7 @@ from geomprep.model.point_graph import PointGraph
 from geomprep.model.quality import (
     PROFILE_KINDS,
     RESOLUTION_LEVELS,
+    Narrowing,
     SegmentIntervals,
     SegmentProfiles,
     SegmentResolution,
@@ -53,6 +54,7 @@ __all__ = [
     "Junctions",
     "Lumped",
     "Measures",
+    "Narrowing",
     "Network",
     "Nodes",
     "Origin",

@@ -14,7 +14,7 @@ from geomprep.errors import InputError
 from geomprep.model.arrays import FloatArray, IntArray, TextArray, Uint8Array, frozen, same_length, texts
 from geomprep.model.basis import Basis
 from geomprep.model.parameters import Blood, Inlet, Outlet, Surroundings, TubeLaw
-from geomprep.model.quality import SegmentIntervals, SegmentProfiles, SegmentResolution
+from geomprep.model.quality import Narrowing, SegmentIntervals, SegmentProfiles, SegmentResolution
 
 __all__ = [
     "NODE_ROLES",
@@ -360,6 +360,7 @@ class Network:
     profiles: SegmentProfiles | None = None
     resolution: SegmentResolution | None = None
     intervals: SegmentIntervals | None = None
+    narrowings: tuple[Narrowing, ...] | None = None
     junctions: Junctions | None = None
     blood: Blood | None = None
     surroundings: tuple[Surroundings, ...] | None = None

@@ -8,7 +8,14 @@ import numpy as np
 
 from geomprep.model.arrays import FloatArray, IntArray, Uint8Array, frozen, same_length
 
-__all__ = ["PROFILE_KINDS", "RESOLUTION_LEVELS", "SegmentIntervals", "SegmentProfiles", "SegmentResolution"]
+__all__ = [
+    "PROFILE_KINDS",
+    "RESOLUTION_LEVELS",
+    "Narrowing",
+    "SegmentIntervals",
+    "SegmentProfiles",
+    "SegmentResolution",
+]
 
 PROFILE_KINDS = ("constant", "linear", "piecewise")
 """Name in files of each form of ln r along a segment."""
@@ -94,3 +101,39 @@ class SegmentIntervals(_Columns):
     volume_high: FloatArray
     inverse_fourth_power_low: FloatArray
     inverse_fourth_power_high: FloatArray
+
+
+@dataclass(frozen=True)
+class Narrowing:
+    """A narrowing or widening of a segment against the vessel beside it.
+
+    Attributes
+    ----------
+    segment : int
+    kind : str
+        ``narrowing`` or ``widening``.
+    start, end, place : float
+        Distance along the segment of both edges and of the extreme radius, m.
+    radius, reference_radius : float
+        There, and expected there from the vessel beside it, m.
+    degree_by_diameter, degree_by_area : float
+        |1 − r/reference| and |1 − (r/reference)²|.
+    focal : str
+        ``focal``, or ``cannot be told`` where it is long or has a reference on one side only: a narrow vessel
+        then looks like a narrowed one.
+    against_distal, against_original : float, optional
+        Narrowings of arteries: against the normal vessel beyond, and against the lumen estimated at the place.
+    """
+
+    segment: int
+    kind: str
+    start: float
+    end: float
+    place: float
+    radius: float
+    reference_radius: float
+    degree_by_diameter: float
+    degree_by_area: float
+    focal: str
+    against_distal: float | None = None
+    against_original: float | None = None

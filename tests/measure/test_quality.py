@@ -61,3 +61,22 @@ def test_large_networks_are_not_fitted() -> None:
     assert network.profiles is None
     assert network.intervals is None
     assert network.resolution is not None
+
+
+def test_a_narrowing_is_listed_with_both_conventions() -> None:
+    """A throat of 1.2 mm in an artery of 4.0 mm diameter: 70 % by diameter, 91 % by area."""
+    along = np.linspace(0, 80e-3, 321)
+    network = tube(2e-3 - 1.4e-3 * np.exp(-(((along - 40e-3) / 3e-3) ** 2)))
+    import dataclasses
+
+    artery = dataclasses.replace(network, segments=dataclasses.replace(network.segments, vessel_class=np.ones(1)))
+    described, findings = describe(artery, None)
+    (row,) = described.narrowings
+    assert (row.kind, row.focal) == ("narrowing", "focal")
+    assert row.degree_by_diameter == pytest.approx(0.7, abs=1e-4)
+    assert row.degree_by_area == pytest.approx(0.91, abs=1e-4)
+    assert row.against_distal == pytest.approx(0.7, abs=1e-3)
+    assert row.against_original == pytest.approx(0.7, abs=1e-3)
+    assert any("narrowing of 70 % by diameter (91 % by area)" in finding.message for finding in findings)
+    (vein,) = describe(network, None)[0].narrowings
+    assert (vein.against_distal, vein.against_original) == (None, None)
