@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import gzip
 import itertools
+import json
 import shutil
 import struct
 import tempfile
@@ -13,7 +14,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from phantoms.skins import Mesh, ellipse, straight, swept
+from phantoms.skins import Mesh, ellipse, joined, straight, swept
 from vtkmodules.util.numpy_support import numpy_to_vtk, numpy_to_vtkIdTypeArray
 from vtkmodules.vtkCommonCore import vtkPoints
 from vtkmodules.vtkCommonDataModel import vtkCellArray, vtkImageData, vtkPolyData
@@ -154,6 +155,47 @@ def test_an_elliptic_surface_gives_the_resistance_of_an_ellipse(tmp_path: Path) 
     assert found(result, "radii of lumen surface and lines").value == pytest.approx(np.sqrt(2), rel=1e-3)
     report = validate_network(tmp_path / "results" / "network.json")
     assert not report.faults
+
+
+def test_the_validator_holds_the_friction_shape_against_the_resistance(tmp_path: Path) -> None:
+    case = one_vein(tmp_path, 'lumen_surface = "skin.vtp"')
+    points, triangles = straight(ellipse(24, LONG, SHORT), 20, LENGTH + 20)
+    surface_file(tmp_path / "skin.vtp", (points - [0, 0, 10], triangles))
+    build(case, output=tmp_path / "results")
+    file = tmp_path / "results" / "network.json"
+    document = json.loads(file.read_text(encoding="utf-8"))
+    bases = [row for row in document["basis"]["fields"] if row["field"] == "segments.friction_shape"]
+    assert [row["basis"] for row in bases] == ["measured"]
+    document["segments"]["friction_shape"] = [1.0]
+    file.write_text(json.dumps(document), encoding="utf-8")
+    assert [fault.place for fault in validate_network(file).faults] == ["segments.lumped.resistance[0]"]
+
+
+def test_each_input_has_its_own_surface(tmp_path: Path) -> None:
+    """Two veins 50 mm apart in two files inside two skins; only the second input states them."""
+    case = one_vein(tmp_path)
+    z = np.arange(0, 61.0)
+    write_lines(
+        tmp_path / "second.vtp", np.stack((0 * z + 50, 0 * z, z), axis=1), np.arange(61), [0, 61],
+        {"radius": np.full(61, SHORT)},
+    )  # fmt: skip
+    text = case.read_text(encoding="utf-8")
+    first = text[text.index("[[input]]") : text.index("[imaging_state]")]
+    second = first.replace("line.vtp", "second.vtp") + 'lumen_surface = "skins.vtp"\n'
+    ends = text[text.index("[[inlets]]") :]
+    case.write_text(text.replace(first, first + second) + ends.replace('"0 0', '"50 0'), encoding="utf-8")
+    points, triangles = straight(ellipse(24, LONG, SHORT), 20, LENGTH + 20)
+    both = joined((points - [0, 0, 10], triangles), (points - [-50, 0, 10], triangles))
+    surface_file(tmp_path / "skins.vtp", both)
+    result = build(case, dry_run=True)
+    of_second = result.network.segments.input_id == 1
+    assert of_second.sum() == 1
+    shape = result.network.segments.friction_shape
+    assert shape[~of_second].tolist() == [1.0]
+    assert shape[of_second] == pytest.approx([1.25], rel=2e-3)
+    ratio = result.network.lumped.resistance[of_second] / result.network.lumped.resistance[~of_second]
+    # 24 corners: area 12·sin(15°)/π = 0.9886 of the ellipse's; 1.25/(2·0.9886)² of the circle with r = 2
+    assert ratio == pytest.approx([1.25 / (2 * 12 * np.sin(np.pi / 12) / np.pi) ** 2], rel=2e-3)
 
 
 def test_marked_stations_keep_their_radius(tmp_path: Path) -> None:
