@@ -10,11 +10,15 @@ from scipy.spatial import KDTree
 from geomprep.curves import interpolate, line_sums, piece_integrals, pieces
 from geomprep.model import BoolArray, FloatArray, IntArray, Stations, TextArray, Uint8Array
 
-__all__ = ["Cells", "Nearest", "Reach", "cells", "nearest", "shared_pairs"]
+__all__ = ["Cells", "Nearest", "Reach", "cells", "nearest", "nearest_of_pairs", "shared_pairs"]
 
 _FEWEST, _MOST = 4, 5000  # cells of a segment
-_LOOKED_AT = 24
-"""Cells of the other network that are tried for each cell, by the distance of their middles."""
+_LOOKED_AT = (6, 24)
+"""Cells of the other network that are tried for each cell, by the distance of their middles: more where none fits."""
+_BLOCK = 50_000  # cells at once: 50,000 · 24 · 3 numbers are 29 MB
+
+Kinds = tuple[tuple[TextArray, Uint8Array], tuple[TextArray, Uint8Array]]
+"""Name and class of the segments of two networks."""
 
 
 @dataclass(frozen=True)
@@ -141,13 +145,7 @@ def cells(stations: Stations, size: float) -> Cells:
     )
 
 
-def nearest(
-    of: Cells,
-    among: Cells,
-    kinds: tuple[tuple[TextArray, Uint8Array], tuple[TextArray, Uint8Array]],
-    reach: Reach,
-    pairs: IntArray | None = None,
-) -> Nearest:
+def nearest(of: Cells, among: Cells, kinds: Kinds, reach: Reach) -> Nearest:
     """Find the segment along which each cell runs.
 
     Vessels of different known classes never answer to one another; names only widen the reach.
@@ -159,8 +157,6 @@ def nearest(
     kinds : tuple
         Name and class of the segments of both: ((s,) str, (s,) uint8) each.
     reach : Reach
-    pairs : (p, 2) int array, optional
-        The only segments that may answer to one another; all where not given.
 
     Returns
     -------
@@ -175,36 +171,121 @@ def nearest(
     >>> set(nearest(cells(line, 0.5), cells(beside, 0.5), (kind, kind), reach).segment.tolist())
     {0}
     """
+    segment, radius = np.full(len(of.length), -1), np.full(len(of.length), np.nan)
+    _fill(segment, radius, (of, among), kinds, reach, None)
+    return Nearest(segment, radius)
+
+
+def nearest_of_pairs(of: Cells, among: Cells, kinds: Kinds, reach: Reach, pairs: IntArray, before: Nearest) -> Nearest:
+    """Find the segment along which each cell runs where only some pairs of segments may answer to one another.
+
+    Parameters
+    ----------
+    of, among, kinds, reach
+        As for :func:`nearest`.
+    pairs : (p, 2) int array
+        Segment of the one, segment of the other.
+    before : Nearest
+        Answer of :func:`nearest`: a cell whose nearest segment is one of its pairs keeps it.
+
+    Returns
+    -------
+    Nearest
+
+    Examples
+    --------
+    >>> line = Stations([0, 2], [0.0, 0.01], [[0.0, 0, 0], [0.01, 0, 0]], [1e-3, 1e-3], [0, 0])
+    >>> cut, kind = cells(line, 0.5), (np.array([""], object), np.array([1], np.uint8))
+    >>> reach = Reach(within=0.5, named_within=1.0, floor=0.0, cosine=0.5)
+    >>> first = nearest(cut, cut, (kind, kind), reach)
+    >>> set(nearest_of_pairs(cut, cut, (kind, kind), reach, np.empty((0, 2), np.int64), first).segment.tolist())
+    {-1}
+    """
+    known = np.sort(pairs[:, 0] * len(among.first) + pairs[:, 1])
+    kept = (before.segment >= 0) & _is_one_of(of.segment * len(among.first) + before.segment, known)
+    segment, radius = np.where(kept, before.segment, -1), np.where(kept, before.radius, np.nan)
+    _fill(segment, radius, (of, among), kinds, reach, known)
+    return Nearest(segment, radius)
+
+
+def _fill(
+    segment: IntArray,
+    radius: FloatArray,
+    both: tuple[Cells, Cells],
+    kinds: Kinds,
+    reach: Reach,
+    known: IntArray | None,
+) -> None:
+    """Answer cells that have none, trying few neighbours first and more where none of these fits."""
+    of, among = both
     if not (len(of.length) and len(among.length)):
-        return Nearest(np.full(len(of.length), -1), np.full(len(of.length), np.nan))
-    near = KDTree(among.middle).query(of.middle, k=min(_LOOKED_AT, len(among.length)))[1].reshape(len(of.length), -1)
-    distance, radius = _foot(of, among, near)
-    own, other = of.segment[:, None], among.segment[near]
-    limit = _limits(0.5 * (of.radius[:, None] + radius), (own, other), kinds, reach)
-    fits = (distance <= limit) & (_cosine(of, among, near) >= reach.cosine) & _one_class(own, other, kinds)
-    if pairs is not None:
-        known = np.sort(pairs[:, 0] * len(among.first) + pairs[:, 1])
-        fits &= np.isin(own * len(among.first) + other, known)
+        return
+    tree = KDTree(among.middle)
+    words = np.unique(np.concatenate((kinds[0][0], kinds[1][0])).astype(str), return_inverse=True)[1]
+    traits = _Traits(words[: len(kinds[0][0])], words[len(kinds[0][0]) :], kinds)
+    for count in _LOOKED_AT:
+        left = np.flatnonzero(segment < 0)
+        for begin in range(0, len(left), _BLOCK):
+            rows = left[begin : begin + _BLOCK]
+            near = tree.query(of.middle[rows], k=min(count, len(among.length)))[1].reshape(len(rows), -1)
+            segment[rows], radius[rows] = _best((of, rows), (among, near), traits, reach, known)
+
+
+@dataclass(frozen=True, eq=False)
+class _Traits:
+    """Number of the name of each segment of both networks, and their names and classes."""
+
+    own_word: IntArray
+    other_word: IntArray
+    kinds: Kinds
+
+
+def _best(
+    one: tuple[Cells, IntArray],
+    other: tuple[Cells, IntArray],
+    traits: _Traits,
+    reach: Reach,
+    known: IntArray | None,
+) -> tuple[IntArray, FloatArray]:
+    """Segment of the nearest candidate that fits, and its radius at the foot."""
+    of, rows = one
+    among, near = other
+    distance, radius = _foot(of.middle[rows], among, near)
+    own, theirs = of.segment[rows][:, None], among.segment[near]
+    limit = _limits(0.5 * (of.radius[rows][:, None] + radius), (own, theirs), traits, reach)
+    fits = (distance <= limit) & _one_class(own, theirs, traits.kinds)
+    fits &= _cosine(of.end[rows] - of.start[rows], among, near) >= reach.cosine
+    if known is not None:
+        fits &= _is_one_of(own * len(among.first) + theirs, known)
     best = np.argmin(np.where(fits, distance, np.inf), axis=1)[:, None]
     found = np.take_along_axis(fits, best, axis=1)[:, 0]
-    segment = np.where(found, np.take_along_axis(other, best, axis=1)[:, 0], -1)
-    return Nearest(segment, np.where(found, np.take_along_axis(radius, best, axis=1)[:, 0], np.nan))
+    segment = np.where(found, np.take_along_axis(theirs, best, axis=1)[:, 0], -1)
+    return segment, np.where(found, np.take_along_axis(radius, best, axis=1)[:, 0], np.nan)
 
 
-def _foot(of: Cells, among: Cells, near: IntArray) -> tuple[FloatArray, FloatArray]:
-    """Distance from the middle of each cell to the axis of its candidates, and their radius there."""
+def _is_one_of(number: IntArray, known: IntArray) -> BoolArray:
+    """Whether numbers stand in a sorted list."""
+    if not len(known):
+        return np.zeros(number.shape, np.bool_)
+    found: BoolArray = known[np.minimum(np.searchsorted(known, number), len(known) - 1)] == number
+    return found
+
+
+def _foot(point: FloatArray, among: Cells, near: IntArray) -> tuple[FloatArray, FloatArray]:
+    """Distance from points to the axis of their candidates, and the radius there."""
     start, way = among.start[near], among.end[near] - among.start[near]
-    to = of.middle[:, None] - start
-    square = np.maximum((way * way).sum(axis=2), np.finfo(float).tiny)
-    part = np.clip((to * way).sum(axis=2) / square, 0.0, 1.0)
-    distance = np.linalg.norm(to - part[..., None] * way, axis=2)
+    to = point[:, None] - start
+    square = np.maximum(np.einsum("ijk,ijk->ij", way, way), np.finfo(float).tiny)
+    part = np.clip(np.einsum("ijk,ijk->ij", to, way) / square, 0.0, 1.0)
+    aside = to - part[..., None] * way
+    distance = np.sqrt(np.einsum("ijk,ijk->ij", aside, aside))
     return distance, among.radius_start[near] * (1 - part) + among.radius_end[near] * part
 
 
-def _cosine(of: Cells, among: Cells, near: IntArray) -> FloatArray:
-    """Cosine of the angle between each cell and its candidates, without sign."""
-    one, other = (_unit(each.end - each.start) for each in (of, among))
-    cosine: FloatArray = np.abs((one[:, None] * other[near]).sum(axis=2))
+def _cosine(way: FloatArray, among: Cells, near: IntArray) -> FloatArray:
+    """Cosine of the angle between ways and the candidates, without sign."""
+    other = _unit(among.end - among.start)
+    cosine: FloatArray = np.abs(np.einsum("ik,ijk->ij", _unit(way), other[near]))
     return cosine
 
 
@@ -214,23 +295,14 @@ def _unit(way: FloatArray) -> FloatArray:
     return unit
 
 
-def _limits(
-    radius: FloatArray,
-    rows: tuple[IntArray, IntArray],
-    kinds: tuple[tuple[TextArray, Uint8Array], tuple[TextArray, Uint8Array]],
-    reach: Reach,
-) -> FloatArray:
+def _limits(radius: FloatArray, rows: tuple[IntArray, IntArray], traits: _Traits, reach: Reach) -> FloatArray:
     """Distance up to which cells and candidates run along one another."""
-    words = np.concatenate((kinds[0][0], kinds[1][0])).astype(str)
-    number = np.unique(words, return_inverse=True)[1]
-    one, other = number[: len(kinds[0][0])][rows[0]], number[len(kinds[0][0]) :][rows[1]]
-    named = (one == other) & (kinds[0][0][rows[0]] != "")
+    own, other = rows
+    named = (traits.own_word[own] == traits.other_word[other]) & (traits.kinds[0][0][own] != "")
     return np.maximum(np.where(named, reach.named_within, reach.within) * radius, reach.floor)
 
 
-def _one_class(
-    own: IntArray, other: IntArray, kinds: tuple[tuple[TextArray, Uint8Array], tuple[TextArray, Uint8Array]]
-) -> BoolArray:
+def _one_class(own: IntArray, other: IntArray, kinds: Kinds) -> BoolArray:
     """Whether vessels are of one class, or one of them of none."""
     one, two = kinds[0][1][own], kinds[1][1][other]
     same: BoolArray = (one == two) | (one == 0) | (two == 0)

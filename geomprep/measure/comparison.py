@@ -11,7 +11,7 @@ from scipy.sparse import coo_array
 from scipy.sparse.csgraph import connected_components
 from scipy.special import ndtr, ndtri
 
-from geomprep.measure.alongside import Cells, Nearest, Reach, cells, nearest, shared_pairs
+from geomprep.measure.alongside import Cells, Nearest, Reach, cells, nearest, nearest_of_pairs, shared_pairs
 from geomprep.measure.comparison_settings import ComparisonSettings
 from geomprep.model import BoolArray, FloatArray, IntArray, Stations, TextArray, Uint8Array
 
@@ -172,8 +172,8 @@ def _laid_together(first: Vessels, second: Vessels, settings: ComparisonSettings
     groups, label = connected_components(matrix, directed=False)
     label = label.astype(np.int64)
     return (
-        _Side(first, one, nearest(one, two, kinds, reach, pairs), label[: size[0]], 1.0),
-        _Side(second, two, nearest(two, one, back, reach, pairs[:, ::-1]), label[size[0] :], -1.0),
+        _Side(first, one, nearest_of_pairs(one, two, kinds, reach, pairs, met[0][1]), label[: size[0]], 1.0),
+        _Side(second, two, nearest_of_pairs(two, one, back, reach, pairs[:, ::-1], met[1][1]), label[size[0] :], -1.0),
     ), int(groups)
 
 
