@@ -8,7 +8,7 @@ from typing import Any, Final
 
 import numpy as np
 
-from geomprep.case.compare_findings import comparison_findings
+from geomprep.case.compare_findings import below_limits, comparison_findings
 from geomprep.case.compare_routes import EndPair, RouteChange, effects, matched_ends, route_changes
 from geomprep.case.network_reading import ReadNetwork, read_network
 from geomprep.errors import InputError
@@ -223,6 +223,7 @@ def _answer(
         _vessel((one, two), found, group, resistance[group], (float(effect[group]), whole[0]))
         for group in range(len(found))
     ]
+    small = below_limits([(vessel.name, bool(vessel.changes), vessel.effect_part) for vessel in vessels])
     vessels.sort(key=lambda vessel: (not vessel.changes, _rank(vessel)))
     return NetworkComparison(
         files=(one.file, two.file),
@@ -233,7 +234,7 @@ def _answer(
         ends=ends,
         shared_part=float(found.shared.sum() / found.length.sum()),
         settings=settings,
-        findings=comparison_findings((one, two), found, settings, ends, (left_out, routes_left_out)),
+        findings=(*comparison_findings((one, two), found, settings, ends, (left_out, routes_left_out)), *small),
     )
 
 

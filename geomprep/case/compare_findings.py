@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from typing import Any, Final
 
 from geomprep.case.compare_routes import EndPair
@@ -10,10 +10,13 @@ from geomprep.case.network_reading import ReadNetwork
 from geomprep.findings import Finding, Severity
 from geomprep.measure.comparison import Comparison, ComparisonSettings
 
-__all__ = ["comparison_findings"]
+__all__ = ["below_limits", "comparison_findings"]
 
 _SHARED: Final = 0.5
 """Part of the length below which two networks are hardly of one subject in one frame; a judgement."""
+
+_TOGETHER: Final = 0.01
+"""Part of a resistance from which the sum of small changes is said; a judgement."""
 
 _NAMED: Final = 3
 """Ends that a message names."""
@@ -132,9 +135,47 @@ def _noise(settings: ComparisonSettings) -> Iterator[Finding]:
         )
 
 
+def below_limits(vessels: Sequence[tuple[str, bool, float | None]]) -> tuple[Finding, ...]:
+    """Return a note where vessels that do not count as changed move the resistance from inlets to outlets together.
+
+    Parameters
+    ----------
+    vessels : sequence of tuple
+        Name, whether it differs, and effect over the resistance of the first network (None where not known).
+
+    Examples
+    --------
+    >>> below_limits([("a", True, 0.5), ("b", False, 0.001)])
+    ()
+    >>> below_limits([("a", False, -0.03), ("b", False, 0.001)])[0].value
+    -0.029
+    """
+    small = [(abs(part), part, name) for name, differs, part in vessels if not differs and part is not None]
+    total = sum(part for _, part, _ in small)
+    if abs(total) < _TOGETHER:
+        return ()
+    _, part, name = max(small)
+    return (
+        Finding(
+            "below the limits",
+            Severity.NOTE,
+            f"vessels that differ by less than the limits change the resistance from inlets to outlets by "
+            f"{100 * total:+.2g} % together, most of all {name} ({100 * part:+.2g} %)",
+            where=name,
+            value=round(total, 12),
+            limit=_TOGETHER,
+            unit="1",
+        ),
+    )
+
+
 def _left_out(effects: int, routes: int) -> Iterator[Finding]:
     """What was too much to compute."""
     if effects:
-        yield Finding("left out", Severity.NOTE, f"the effect of {effects} vessels of the smallest change is not given")
+        yield Finding(
+            "left out",
+            Severity.NOTE,
+            f"the effect of {effects} vessels of the smallest change of resistance is not given",
+        )
     if routes:
         yield Finding("left out", Severity.NOTE, f"{routes} pairs of an inlet and an outlet are not listed")

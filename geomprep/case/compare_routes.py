@@ -8,7 +8,7 @@ from typing import Final
 import numpy as np
 
 from geomprep.case.network_reading import ReadNetwork
-from geomprep.measure.comparison import Comparison
+from geomprep.measure.comparison import Change, Comparison
 from geomprep.measure.route_resistance import Routes, effect_of_factor
 from geomprep.model import FloatArray, IntArray
 from geomprep.solve import effective_resistance
@@ -165,24 +165,24 @@ def effects(
     effect : (g,) float array
         Pa·s/m³: the mean of making the change in the first network and of taking it back in the second, so that it
         does not depend on which network is called the first; that of the one network that has the vessel where it
-        is new or gone. NaN where no number says it, or the vessel does not differ.
+        is new or gone. NaN where no number says it.
     left_out : int
-        Vessels that differ and were not looked at, those of the smallest change.
+        Vessels that were not looked at, those of the smallest change of resistance.
     """
-    changed = np.flatnonzero(found.changes.any(axis=1))
-    size = np.abs(np.log(resistance[changed, 1] / resistance[changed, 0]))
-    looked_at = changed[np.argsort(-np.where(np.isnan(size), np.inf, size), kind="stable")][:MOST_EFFECTS]
-    effect = np.full(len(found), np.nan)
+    one_only = found.changes[:, [Change.NEW, Change.GONE]].any(axis=1)
+    size = np.where(one_only, np.inf, np.abs(np.log(resistance[:, 1] / resistance[:, 0])))
+    known = np.flatnonzero(size > 0)  # not those of no one resistance, which are not a number
+    looked_at = known[np.argsort(-size[known], kind="stable")][:MOST_EFFECTS]
+    effect = np.where(size == 0, 0.0, np.nan)
     for group in looked_at.tolist():
         rows = [np.flatnonzero(label == group) for label in found.group]
         if len(rows[0]) and len(rows[1]):
             ratio = float(resistance[group, 1] / resistance[group, 0])
-            if np.isfinite(ratio):
-                there = effect_of_factor(routes[0], whole[0], rows[0], ratio)
-                back = effect_of_factor(routes[1], whole[1], rows[1], 1.0 / ratio)
-                effect[group] = 0.5 * (there - back)
+            there = effect_of_factor(routes[0], whole[0], rows[0], ratio)
+            back = effect_of_factor(routes[1], whole[1], rows[1], 1.0 / ratio)
+            effect[group] = 0.5 * (there - back)
         elif len(rows[0]):
             effect[group] = effect_of_factor(routes[0], whole[0], rows[0], np.inf)
         else:
             effect[group] = -effect_of_factor(routes[1], whole[1], rows[1], np.inf)
-    return effect, len(changed) - len(looked_at)
+    return effect, len(known) - len(looked_at)

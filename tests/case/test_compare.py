@@ -136,6 +136,17 @@ def test_a_narrowed_branch(before: Path, narrowed: Path) -> None:
     assert np.array(routes) == pytest.approx(np.array(sorted((left, right))), rel=1e-9)
 
 
+def test_small_changes_are_summed_up(tmp_path: Path, before: Path) -> None:
+    """A trunk narrower by 3 % is within the limit of 5 %, and raises its resistance by 0.97⁻⁴ − 1 = 13 %."""
+    found = compare(before, network(tmp_path / "slightly", ((*TRUNK[:2], 0.97 * 3), LEFT, RIGHT)))
+    assert found.changed == ()
+    (note,) = (one for one in found.findings if one.kind == "below the limits")
+    expected = poiseuille(TRUNK) * (0.97**-4 - 1) / found.total[0]
+    assert expected > 0.01
+    assert note.value == pytest.approx(expected, rel=1e-6)
+    assert sorted(vessel.effect == 0 for vessel in found.vessels) == [False, True, True]
+
+
 def test_two_changes_share_the_difference(tmp_path: Path, before: Path) -> None:
     """Trunk and left branch both narrower.
 
@@ -275,3 +286,13 @@ def test_a_folder_without_network_and_what_is_no_json(tmp_path: Path, before: Pa
 def test_the_folder_of_a_case_will_do(before: Path, tmp_path: Path) -> None:
     shutil.copytree(before.parent, tmp_path / "case")
     assert compare(tmp_path / "case", before).changed == ()
+
+
+def test_what_is_too_much_is_left_out_and_said(before: Path, narrowed: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("geomprep.case.compare_routes.MOST_EFFECTS", 0)
+    monkeypatch.setattr("geomprep.case.compare_routes.MOST_ROUTES", 1)
+    found = compare(before, narrowed)
+    assert only(found).effect is None
+    assert len(found.routes) == 1
+    said = [finding.message for finding in found.findings if finding.kind == "left out"]
+    assert ["effect of 1 vessels" in said[0], "1 pairs" in said[1]] == [True, True]
