@@ -232,6 +232,7 @@ _MAKERS: dict[str, Callable[[Network, SteadyState, ExportContext], Any]] = {
     "segments": _segments,
     "segments.zones": _zones,
     "segments.profile": _profile,
+    "segments.bending": lambda network, state, context: None if network.bending is None else {},
     "segments.resolution": _resolution,
     "segments.intervals": lambda network, state, context: None if network.intervals is None else {},
     "segments.lumped": lambda network, state, context: {"at_state": IMAGED},

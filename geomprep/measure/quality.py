@@ -7,11 +7,20 @@ import dataclasses
 import numpy as np
 
 from geomprep.findings import Finding, Severity
+from geomprep.measure.curves import tortuosity
 from geomprep.measure.narrowings import Narrowings, narrowings
 from geomprep.measure.profiles import radius_profiles
 from geomprep.measure.resolution import resolution, resolution_findings, unresolved_share
 from geomprep.measure.uncertainty import intervals
-from geomprep.model import FloatArray, Narrowing, Network, SegmentIntervals, SegmentProfiles, SegmentResolution
+from geomprep.model import (
+    FloatArray,
+    Narrowing,
+    Network,
+    SegmentBending,
+    SegmentIntervals,
+    SegmentProfiles,
+    SegmentResolution,
+)
 
 __all__ = ["describe", "unresolved_finding"]
 
@@ -34,7 +43,7 @@ def describe(network: Network, voxel: float | None) -> tuple[Network, tuple[Find
     Returns
     -------
     Network
-        With `profiles` and `narrowings` filled up to 200,000 stations; above, fitting takes longer than all else.
+        With `profiles`, `bending` and `narrowings` filled up to 200,000 stations; above, fitting takes longer than all else.
         `resolution` and, up to the same size, `intervals` are filled where the voxel is known.
     findings : tuple of Finding
     """
@@ -43,7 +52,7 @@ def describe(network: Network, voxel: float | None) -> tuple[Network, tuple[Find
     findings: tuple[Finding, ...] = ()
     few = len(network.stations) <= _LARGEST
     if few:
-        network, findings = _with_profiles(network)
+        network, findings = _with_profiles(_with_bending(network))
         network, more = _with_narrowings(network)
         findings += more
     if voxel is not None:
@@ -71,6 +80,13 @@ def _with_profiles(network: Network) -> tuple[Network, tuple[Finding, ...]]:
     where = str(network.segments.id[worst])
     finding = Finding("one radius", Severity.NOTE, message, where, value=float(len(wrong)), limit=_ONE_RADIUS)
     return dataclasses.replace(network, profiles=table), (finding,)
+
+
+def _with_bending(network: Network) -> Network:
+    """Tortuosity of every segment."""
+    found = tortuosity(network.stations.position, network.stations.offsets)
+    table = SegmentBending(found.inflections, found.sum_of_angles_metric, found.total_curvature, found.step)
+    return dataclasses.replace(network, bending=table)
 
 
 def _with_narrowings(network: Network) -> tuple[Network, tuple[Finding, ...]]:

@@ -14,7 +14,7 @@ from geomprep.errors import InputError
 from geomprep.model.arrays import FloatArray, IntArray, TextArray, Uint8Array, frozen, same_length, texts
 from geomprep.model.basis import Basis
 from geomprep.model.parameters import Blood, Inlet, Outlet, Surroundings, TubeLaw
-from geomprep.model.quality import Narrowing, SegmentIntervals, SegmentProfiles, SegmentResolution
+from geomprep.model.quality import Narrowing, SegmentBending, SegmentIntervals, SegmentProfiles, SegmentResolution
 
 __all__ = [
     "NODE_ROLES",
@@ -358,6 +358,7 @@ class Network:
     measures: Measures | None = None
     cuts: Cuts | None = None
     profiles: SegmentProfiles | None = None
+    bending: SegmentBending | None = None
     resolution: SegmentResolution | None = None
     intervals: SegmentIntervals | None = None
     narrowings: tuple[Narrowing, ...] | None = None

@@ -12,6 +12,7 @@ __all__ = [
     "PROFILE_KINDS",
     "RESOLUTION_LEVELS",
     "Narrowing",
+    "SegmentBending",
     "SegmentIntervals",
     "SegmentProfiles",
     "SegmentResolution",
@@ -29,7 +30,7 @@ class _Columns:
 
     def __post_init__(self) -> None:
         """Make the arrays read-only and check that they fit together."""
-        kinds = {"kind": np.uint8, "level": np.uint8, "pieces": np.int64}
+        kinds = {"kind": np.uint8, "level": np.uint8, "pieces": np.int64, "inflections": np.int64}
         names = [name for name in self.__dataclass_fields__ if name != "confidence"]  # type: ignore[attr-defined]
         for name in names:
             object.__setattr__(self, name, frozen(name, getattr(self, name), kinds.get(name, np.float64)))
@@ -59,6 +60,28 @@ class SegmentProfiles(_Columns):
     noise_bias: FloatArray
     ratio_for_volume: FloatArray
     ratio_median: FloatArray
+
+
+@dataclass(frozen=True, eq=False)
+class SegmentBending(_Columns):
+    """How each segment bends, (s,) arrays; comparable only at like steps.
+
+    Attributes
+    ----------
+    inflections : int array
+        Places where the principal normal turns about.
+    sum_of_angles : float array
+        Sum of the angles, in-plane and torsional, between successive pieces over the length, rad/m.
+    total_curvature : float array
+        Sum of the angles between successive pieces, rad.
+    step : float array
+        Mean distance between stations, m.
+    """
+
+    inflections: IntArray
+    sum_of_angles: FloatArray
+    total_curvature: FloatArray
+    step: FloatArray
 
 
 @dataclass(frozen=True, eq=False)

@@ -80,3 +80,18 @@ def test_a_narrowing_is_listed_with_both_conventions() -> None:
     assert any("narrowing of 70 % by diameter (91 % by area)" in finding.message for finding in findings)
     (vein,) = describe(network, None)[0].narrowings
     assert (vein.against_distal, vein.against_original) == (None, None)
+
+
+def test_bending_of_a_half_circle() -> None:
+    """A half circle of 20 mm radius: the tangent turns by π over π · 20 mm, in the plane and one way."""
+    import dataclasses
+
+    turn = np.linspace(0, np.pi, 401)
+    network = tube(np.full(401, 2e-3), length=np.pi * 20e-3)
+    position = 20e-3 * np.stack((np.cos(turn), np.sin(turn), 0 * turn), axis=1)
+    bent = dataclasses.replace(network, stations=dataclasses.replace(network.stations, position=position))
+    bending = describe(bent, None)[0].bending
+    assert bending.total_curvature == pytest.approx([np.pi], rel=0.005)
+    assert bending.sum_of_angles == pytest.approx([1 / 20e-3], rel=0.01)
+    assert bending.inflections.tolist() == [0]
+    assert bending.step == pytest.approx([np.pi * 20e-3 / 400], rel=1e-3)

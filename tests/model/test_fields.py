@@ -61,7 +61,7 @@ def test_attributes_exist_in_the_containers() -> None:
         "nodes": model.Nodes, "segments": model.Segments, "stations": model.Stations, "measures": model.Measures,
         "lumped": model.Lumped, "walls": model.Walls, "junctions": model.Junctions, "cuts": model.Cuts,
         "profiles": model.SegmentProfiles, "resolution": model.SegmentResolution,
-        "intervals": model.SegmentIntervals, "blood": model.Blood,
+        "intervals": model.SegmentIntervals, "bending": model.SegmentBending, "blood": model.Blood,
         "inlets": model.Inlet, "outlets": model.Outlet, "surroundings": model.Surroundings,
     }  # fmt: skip
     known = {f"{name}.{item.name}" for name, kind in holders.items() for item in dataclasses.fields(kind)}
