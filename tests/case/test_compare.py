@@ -296,3 +296,11 @@ def test_what_is_too_much_is_left_out_and_said(before: Path, narrowed: Path, mon
     assert len(found.routes) == 1
     said = [finding.message for finding in found.findings if finding.kind == "left out"]
     assert ["effect of 1 vessels" in said[0], "1 pairs" in said[1]] == [True, True]
+
+
+def test_stations_in_a_companion(tmp_path: Path, before: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("geomprep.export.neutral.MOST_STATIONS_INSIDE", 10)
+    folder = network(tmp_path / "apart", Y)
+    assert len(list(folder.glob("stations-*.npz"))) == 1
+    found = compare(before, folder)
+    assert (found.changed, found.shared_part) == ((), 1)
