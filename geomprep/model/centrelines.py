@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 from typing import Any
 
@@ -74,6 +75,44 @@ class Centrelines:
         same_length(points=self.points, radius=self.radius, raw_points=self.raw_points, basis=self.radius_basis)
         same_length(lines=self.offsets[1:], vessel_class=self.vessel_class, input_id=self.input_id)
         _check_lines(self.connectivity, self.offsets, len(self.points))
+
+    @classmethod
+    def of_lines(
+        cls, lines: Sequence[npt.ArrayLike], radius: float | Sequence[npt.ArrayLike], vessel_class: int = 1
+    ) -> Centrelines:
+        """Return the centrelines of lines given as arrays, each with points of its own.
+
+        Parameters
+        ----------
+        lines : sequence of (n, 3) array_like
+            Metres.
+        radius : float or sequence of float or (n,) array_like
+            One for all lines, or one (or one per point) for each, metres.
+        vessel_class : int
+            Code in :data:`geomprep.model.basis.VESSEL_CLASSES` of all lines.
+
+        Examples
+        --------
+        >>> z = np.linspace(0, 0.02, 5)[:, None] * [0, 0, 1.0]
+        >>> Centrelines.of_lines([z, z + [0.01, 0, 0]], [1e-3, 2e-3]).radius.tolist()[4:6]
+        [0.001, 0.002]
+        """
+        places = [np.asarray(line, np.float64).reshape(-1, 3) for line in lines]
+        given = [radius] * len(places) if isinstance(radius, (int, float)) else radius
+        sizes = [
+            np.broadcast_to(np.asarray(one, np.float64), len(place)) for one, place in zip(given, places, strict=True)
+        ]
+        points = np.concatenate(places)
+        return cls(
+            points=points,
+            radius=np.concatenate(sizes),
+            raw_points=points,
+            connectivity=np.arange(len(points)),
+            offsets=np.concatenate(([0], np.cumsum([len(place) for place in places]))),
+            vessel_class=np.full(len(places), vessel_class, np.uint8),
+            input_id=np.zeros(len(places), np.uint8),
+            radius_basis=np.zeros(len(points), np.uint8),
+        )
 
     @property
     def n_points(self) -> int:

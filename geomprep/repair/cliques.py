@@ -75,6 +75,21 @@ def collapse_cliques(graph: PointGraph, settings: CliqueSettings, given: Given) 
     Returns
     -------
     StepResult
+
+    Examples
+    --------
+    Three branches that end at the corners of a small triangle:
+
+    >>> from geomprep.model import Centrelines
+    >>> from geomprep.repair import join
+    >>> turn = np.radians([90.0, 210.0, 330.0])
+    >>> way = np.stack((np.cos(turn), np.sin(turn), 0 * turn), axis=1)
+    >>> corner = 0.4e-3 * way
+    >>> branches = [c + np.linspace(0, 15e-3, 31)[:, None] * w for c, w in zip(corner, way, strict=True)]
+    >>> sides = [corner[[0, 1]], corner[[1, 2]], corner[[2, 0]]]
+    >>> graph = join(Centrelines.of_lines([*branches, *sides], 1e-3)).graph
+    >>> collapse_cliques(graph, CliqueSettings(), Given()).repairs[0].choice
+    'collapse'
     """
     if not settings.use:
         return StepResult(graph)

@@ -54,6 +54,16 @@ def report_floor(graph: PointGraph, settings: FloorSettings, given: Given) -> St
     -------
     StepResult
         The graph given, and one finding at most.
+
+    Examples
+    --------
+    >>> from geomprep.model import Centrelines
+    >>> from geomprep.repair import join
+    >>> z = np.linspace(0, 20e-3, 21)[:, None] * [0, 0, 1.0]
+    >>> vessels = [z + [8e-3 * k, 0, 0] for k in range(5)]
+    >>> graph = join(Centrelines.of_lines(vessels, [0.4e-3, 0.4e-3, 0.4e-3, 0.4e-3, 1.5e-3])).graph
+    >>> report_floor(graph, FloorSettings(), Given(voxel=0.4e-3)).findings[0].kind
+    'radius floor'
     """
     stated = graph.radius[graph.radius_basis == Basis.MEASURED]
     if len(stated) == 0:

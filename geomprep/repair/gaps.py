@@ -109,10 +109,8 @@ def close_gaps(graph: PointGraph, settings: GapSettings, given: Given) -> StepRe
 
     >>> from geomprep.model import Centrelines
     >>> from geomprep.repair import join
-    >>> along = np.concatenate((np.arange(0, 21), np.arange(24, 45))) * 1e-3
-    >>> points = np.stack((0 * along, 0 * along, along), axis=1)
-    >>> rows = np.arange(42)
-    >>> lines = Centrelines(points, np.full(42, 1e-3), points, rows, [0, 21, 42], [1, 1], [0, 0], 0 * rows)
+    >>> z = np.arange(0, 45)[:, None] * [0, 0, 1e-3]
+    >>> lines = Centrelines.of_lines([z[:21], z[24:]], 1e-3)
     >>> (repair,) = close_gaps(join(lines).graph, GapSettings(), Given()).repairs
     >>> print(f"{repair.choice} {repair.score:.3f}")
     bridge 0.882

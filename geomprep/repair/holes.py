@@ -81,6 +81,19 @@ def fill_holes(graph: PointGraph, settings: HoleSettings, given: Given) -> StepR
     Returns
     -------
     StepResult
+
+    Examples
+    --------
+    A vessel whose middle is drawn as two arms 0.6 mm apart:
+
+    >>> from geomprep.model import Centrelines
+    >>> from geomprep.repair import join
+    >>> t = np.linspace(0, 1, 9)
+    >>> arms = [np.stack((x * np.sin(np.pi * t), 0 * t, 10 + 4 * t), axis=1) * 1e-3 for x in (0.3, -0.3)]
+    >>> ends = [np.array([[0, 0, a], [0, 0, a + 5], [0, 0, a + 10.0]]) * 1e-3 for a in (0, 14)]
+    >>> graph = join(Centrelines.of_lines([*ends, *arms], 1e-3)).graph
+    >>> fill_holes(graph, HoleSettings(), Given()).graph.n_edges
+    12
     """
     repairs: list[Repair] = []
     seen: set[str] = set()

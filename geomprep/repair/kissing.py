@@ -77,6 +77,17 @@ def part_kissing(graph: PointGraph, settings: KissingSettings, given: Given) -> 
     -----
     Straight passage and equal calibre along, unequal across, as evidence of a touch are common practice. A
     communicating vessel is told from a false link by its length outside both tubes alone.
+
+    Examples
+    --------
+    Two vessels that cross through one point:
+
+    >>> from geomprep.model import Centrelines
+    >>> from geomprep.repair import join
+    >>> t = np.linspace(-20e-3, 20e-3, 81)[:, None]
+    >>> graph = join(Centrelines.of_lines([t * [0, 0, 1.0], t * [0.8, 0, 0.6]], [1e-3, 1.5e-3])).graph
+    >>> part_kissing(graph, KissingSettings(), Given()).repairs[0].choice
+    'pairing A'
     """
     if not settings.use:
         return StepResult(graph)

@@ -60,6 +60,18 @@ def name_loops(graph: PointGraph, settings: LoopSettings, given: Given) -> StepR
     -----
     Of 80 fenestrations of intracranial arteries 43 were shorter than 5 mm (doi:10.3389/fneur.2022.986167): a
     short loop is no defect for being short.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> from geomprep.model import Centrelines
+    >>> from geomprep.repair import join
+    >>> t = np.linspace(0, 1, 21)
+    >>> arms = [np.stack((x * np.sin(np.pi * t), 0 * t, 20 + 10 * t), axis=1) * 1e-3 for x in (3, -3)]
+    >>> ends = [np.stack((0 * t, 0 * t, a + 20 * t), axis=1) * 1e-3 for a in (0, 30)]
+    >>> graph = join(Centrelines.of_lines([*ends, *arms], 1e-3)).graph
+    >>> name_loops(graph, LoopSettings(), Given()).findings[0].message[-29:]
+    'again: kept as a fenestration'
     """
     parts, _ = components(graph.n_points, graph.edges)
     loops = graph.n_edges - graph.n_points + parts

@@ -51,6 +51,15 @@ def report_parts(graph: PointGraph, settings: PartSettings, given: Given) -> Ste
     -------
     StepResult
         The graph given. Longest first; beyond 100 the rest is summed up in one finding.
+
+    Examples
+    --------
+    >>> from geomprep.model import Centrelines
+    >>> from geomprep.repair import join
+    >>> z = np.linspace(0, 60e-3, 61)[:, None] * [0, 0, 1.0]
+    >>> graph = join(Centrelines.of_lines([z, z[:21] + [30e-3, 0, 0]], 1e-3)).graph
+    >>> report_parts(graph, PartSettings(), Given()).findings[0].value
+    0.02
     """
     count, label = components(graph.n_points, graph.edges)
     if count < 2 or not settings.use:

@@ -87,10 +87,9 @@ def drop_spurs(graph: PointGraph, settings: SpurSettings, given: Given) -> StepR
 
     >>> from geomprep.model import Centrelines
     >>> from geomprep.repair import join
-    >>> z, x = np.linspace(0, 40e-3, 41), np.linspace(0, 2.2e-3, 8)
-    >>> points = np.stack((np.append(0 * z, x), np.zeros(49), np.append(z, np.full(8, 20e-3))), axis=1)
-    >>> radius, rows = np.append(np.full(41, 2e-3), np.full(8, 0.5e-3)), np.arange(49)
-    >>> lines = Centrelines(points, radius, points, rows, [0, 41, 49], [1, 1], [0, 0], 0 * rows)
+    >>> trunk = np.linspace(0, 40e-3, 41)[:, None] * [0, 0, 1.0]
+    >>> branch = [0, 0, 20e-3] + np.linspace(0, 2.2e-3, 8)[:, None] * [1.0, 0, 0]
+    >>> lines = Centrelines.of_lines([trunk, branch], [2e-3, 0.5e-3])
     >>> drop_spurs(join(lines).graph, SpurSettings(), Given()).repairs[0].choice
     'drop'
     """

@@ -77,6 +77,15 @@ def drop_stray(graph: PointGraph, settings: StraySettings, given: Given) -> Step
     Returns
     -------
     StepResult
+
+    Examples
+    --------
+    >>> from geomprep.model import Centrelines
+    >>> from geomprep.repair import join
+    >>> z = np.linspace(0, 120e-3, 61)[:, None] * [0, 0, 1.0]
+    >>> graph = join(Centrelines.of_lines([z, z[:4] + [30e-3, 0, 0]], 2e-3)).graph
+    >>> drop_stray(graph, StraySettings(), Given()).graph.n_edges
+    60
     """
     if not settings.use:
         return StepResult(graph)
