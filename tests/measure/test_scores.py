@@ -17,7 +17,7 @@ def test_resistance_from_the_voxels_of_a_mask(across: int) -> None:
     """∫ds/r⁴ within 5 % in the median, 10 % at the 95th percentile, on the true axis and half a voxel beside it."""
     made = geometry.from_voxels(across, FIRST, 20)
     readings = {name: np.abs([each.error(name) for each in made]) for name in geometry.READINGS}
-    for name in ("areas", "areas on an axis beside"):
+    for name in ("areas", "areas, weighted", "areas on an axis beside"):
         assert np.median(readings[name]) <= 0.05
         assert np.percentile(readings[name], 95) <= 0.10
     # the distance to the wall must fail on the same set, else it is too easy
@@ -43,7 +43,7 @@ def test_narrowings_in_noise_of_two_percent(form: str, reach: float) -> None:
 
 def test_narrowings_in_masks_twenty_voxels_across() -> None:
     found = geometry.voxel_narrowings(20, FIRST, 10)
-    for name in ("areas", "areas on an axis beside"):
+    for name in ("areas", "areas, weighted", "areas on an axis beside"):
         assert (found[name].missed, found[name].beside) == (0, 0)
         assert np.median(np.abs(found[name].degree)) <= 0.03
         assert np.abs(found[name].place).max() <= 1e-3

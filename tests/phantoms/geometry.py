@@ -21,9 +21,9 @@ from geomprep.model import Network, Nodes, Segments, Stations
 
 MM = 1e-3
 FORMS = ("Gaussian", "cosine", "unlike sides", "flat throat")
-READINGS = ("areas", "areas on an axis beside", "distance map", "largest of the distance map")
-"""Radii of equal area from a mask, on the true axis and on one off by half a voxel in each coordinate, smoothly over
-three radii; the distance to the nearest voxel outside, on the axis between voxel centres, or the largest of the 27 about."""
+READINGS = ("areas", "areas, weighted", "areas on an axis beside", "distance map", "largest of the distance map")
+"""Radii of equal area from a mask, on the true axis, with the distance map as weights, or on an axis off by half a voxel
+in each coordinate, smoothly over three radii; distance to the nearest voxel outside, on the axis or the largest about."""
 _DENSE = 4001
 
 
@@ -133,17 +133,20 @@ def in_voxels(vessel: Vessel, voxel: float, step: float, rng: np.random.Generato
     places = vessel.places(distance)
     low = places.min(axis=0) - wide - voxel * (2.5 + rng.random(3))
     counts = np.ceil((places.max(axis=0) + wide + 2.5 * voxel - low) / voxel).astype(int) + 1
-    axes = [low[k] + voxel * np.arange(counts[k]) for k in range(3)]
-    foot, away = vessel.feet(np.stack(np.meshgrid(*axes, indexing="ij"), axis=-1))
+    sides = [low[k] + voxel * np.arange(counts[k]) for k in range(3)]
+    foot, away = vessel.feet(np.stack(np.meshgrid(*sides, indexing="ij"), axis=-1))
     mask = (away <= vessel.at(foot)) & (foot > -wide) & (foot < length + wide)
     beside = places + 0.5 * voxel * smooth_noise(distance, 3 * np.median(vessel.radius), 3, rng, power=2)
     index, depth = ((places - low) / voxel).T, distance_transform_edt(mask) * voxel
     map_radius = map_coordinates(depth, index, order=1)
     ridge = map_coordinates(maximum_filter(depth, 3), index, order=0)
     grid, lines = VoxelGrid(low, np.full(3, voxel), np.eye(3)), np.array([0, len(distance)])
-    areas = [mask_areas(mask, grid, axis, lines, map_radius, 3 * wide).area for axis in (places, beside)]
+    weights = map_radius.astype(np.float32).astype(float)  # squares of single precision are exact
+    ways = ((places, None), (places, weights), (beside, None))
+    areas = [mask_areas(mask, grid, axis, lines, weight, 3 * wide).area for axis, weight in ways]
     radii = (*np.sqrt(np.array(areas) / np.pi), map_radius, ridge)
-    read = [_joined([(axis, r)]) for axis, r in zip((places, beside, places, places), radii, strict=True)]
+    axes = (places, places, beside, places, places)
+    read = [stations_of([(axis, r)]) for axis, r in zip(axes, radii, strict=True)]
     return Voxels(vessel, voxel, dict(zip(READINGS, read, strict=True)))
 
 
@@ -262,7 +265,7 @@ def noisy_intervals(kind: str, first: int, n: int) -> tuple[Intervals, np.ndarra
         read = true * np.exp(log_scatter(true, deviation) * scatter)
         parts.append((vessel.places(s) + place * noise[:, 1:], read, np.full(len(s), deviation)))
         truth.append((vessel.distance[-1], vessel.volume, vessel.inverse_fourth_power))
-    return intervals(_joined(parts), None, np.concatenate([part[2] for part in parts]), place, settings), np.array(
+    return intervals(stations_of(parts), None, np.concatenate([part[2] for part in parts]), place, settings), np.array(
         truth
     ).T
 
@@ -278,7 +281,7 @@ def _stated(rng: np.random.Generator, kind: str) -> Vessel:
     return Vessel(s, radius, bend, Rotation.random(rng=rng).as_matrix())
 
 
-def _joined(parts: list[tuple[np.ndarray, ...]]) -> Stations:
+def stations_of(parts: list[tuple[np.ndarray, ...]]) -> Stations:
     """Stations of lines, with the lengths of what was read."""
     steps = [np.linalg.norm(np.diff(points, axis=0), axis=1) for points, *_ in parts]
     distance = np.concatenate([np.append(0.0, np.cumsum(step)) for step in steps])
@@ -301,7 +304,7 @@ def voxel_intervals(made: list[Voxels], name: str) -> dict[str, tuple[float, flo
 # ---- closed forms
 
 
-def _network(lines: list[tuple[np.ndarray, np.ndarray]]) -> Network:
+def network_of(lines: list[tuple[np.ndarray, np.ndarray]]) -> Network:
     """Lines of places and radii in m that share nodes where their ends coincide."""
     ends = np.concatenate([points[[0, -1]] for points, _ in lines])
     node_at, node = np.unique(ends.round(9), axis=0, return_inverse=True)
@@ -309,7 +312,7 @@ def _network(lines: list[tuple[np.ndarray, np.ndarray]]) -> Network:
     names = [str(k) for k in range(len(lines))]
     segments = Segments(names, names, node[:, 0], node[:, 1], *[zero] * 5)
     nodes = Nodes([str(k) for k in range(len(flat))], node_at, flat, flat, np.arange(len(flat)))
-    return Network(nodes, segments, _joined(lines))
+    return Network(nodes, segments, stations_of(lines))
 
 
 def closed_form_error(form: str, stations: int) -> float:
@@ -329,7 +332,7 @@ def closed_form_error(form: str, stations: int) -> float:
             length * (5 * z**3 - 3 * z) / 2 / (a**2 * (1 - 2 * q)) ** 2,
         ),
     }[form]
-    measured = measure_segments(_network([(length * part[:, None] * np.array([1.0, 0, 0]), radius)])).measures
+    measured = measure_segments(network_of([(length * part[:, None] * np.array([1.0, 0, 0]), radius)])).measures
     return float(measured.inverse_fourth_power[0] / exact - 1)
 
 
@@ -350,7 +353,7 @@ def y_tube(degrees: float, trunk: float, branch: float, parts: bool) -> tuple[fl
     plain = [(MM * part * stop, np.full(65, MM * radius)) for _, stop, radius in tubes]
     grown = MM * _largest_spheres(part[:33] * ways[0], tubes)
     seen = [(points, np.append(grown, r[33:]) if k < 1 + parts else r) for k, (points, r) in enumerate(plain)]
-    zones, bare = junction_zones(_network(seen)), junction_zones(_network(plain))
+    zones, bare = junction_zones(network_of(seen)), junction_zones(network_of(plain))
     left = 16 - (trunk if parts else trunk / np.sin(turn[0]))
     found = zones.inverse_fourth_power_after[: 1 + parts] * MM**3 * branch**4 / left - 1
     volume = sum(np.pi * radius**2 * np.linalg.norm(stop) for _, stop, radius in tubes) - bare.overlap.sum() / MM**3
