@@ -72,3 +72,13 @@ def test_the_corner_of_a_voxel_path_is_one_lumen(lines) -> None:
 def test_limits_out_of_range(settings: dict) -> None:
     with pytest.raises(InputError, match=r"repair\.holes\."):
         HoleSettings(**settings)
+
+
+def test_an_arm_with_a_name_stays(lines) -> None:
+    from dataclasses import replace
+
+    graph = split_vessel(lines, 0.4)
+    named = [replace(graph, protected=np.arange(graph.n_points) == point) for point in range(graph.n_points)]
+    on_arms = np.flatnonzero(np.abs(graph.points[:, 0]) > 0.1)
+    kept = [fill_holes(named[point], HoleSettings(), Given()).repairs == () for point in on_arms]
+    assert sum(kept) == len(on_arms) // 2  # those of the arm that would go
