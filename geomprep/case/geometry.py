@@ -128,7 +128,7 @@ def draw_repairs(case: Case) -> tuple[Repair, ...]:
     FileError, OpenQuestions, CaseError
         As :func:`draw_network`, but for the ends.
     """
-    return _cut(case, lambda stage, part: None).repairs
+    return _joined(case, repair_rules(case), lambda stage, part: None)[0].repairs
 
 
 def _with_ends(case: Case, cut: _Cut, progress: Progress) -> Drawn:
