@@ -108,7 +108,7 @@ def young_tsai(
     expansion: float,
     inertia: float,
 ) -> Loss:
-    """Return the loss by Young and Tsai, fitted to models and arteries of dogs.
+    """Return the loss by Young and Tsai, fitted to models of arteries and tried in dogs.
 
     With U and D₀ of the vessel before the narrowing and D = √(4A/π),
 
@@ -247,9 +247,7 @@ LAWS: Final[dict[str, Law]] = {
         "artery",
         (
             Limit(_DEGREE, "narrowing-least-degree-dogs", "narrowing-most-degree-dogs", "tried in arteries of dogs"),
-            Limit(
-                _BEFORE, "narrowing-least-reynolds", "narrowing-most-reynolds", "such laws held against solved flows"
-            ),
+            Limit(_BEFORE, "narrowing-least-reynolds", "narrowing-most-reynolds", "later comparisons of such laws"),
         ),
     ),
     "Borda-Carnot": Law(

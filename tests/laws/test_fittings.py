@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -12,6 +13,7 @@ from hypothesis import strategies as st
 from geomprep.errors import InputError
 from geomprep.laws import fittings, lumped
 from geomprep.laws.fittings import LAWS, Loss, Narrowing
+from geomprep.literature import row
 
 RHO, MU = 1060.0, 4e-3
 MMHG = 133.322387415
@@ -73,6 +75,9 @@ def test_young_tsai_as_published() -> None:
     expected = k_v * MU / d0 * speed + 1.52 * RHO / 2 * (ratio - 1) ** 2 * speed**2 + 1.2 * RHO * length * rate
     loss = fittings.loss_by("Young and Tsai", narrowing, RHO, MU, LIMITS)
     assert fittings.pressure_loss(loss, speed * area, rate * area) == pytest.approx(expected, rel=1e-12)
+    # the vessel beyond has no part in it
+    wider = fittings.loss_by("Young and Tsai", replace(narrowing, area_beyond=3 * area), RHO, MU, LIMITS)
+    assert fittings.pressure_loss(wider, speed * area, rate * area) == pytest.approx(expected, rel=1e-12)
 
 
 def test_borda_carnot_worked_by_hand() -> None:
@@ -189,10 +194,10 @@ def test_rows_do_not_mix_and_times_stand_before_them() -> None:
     flow = np.array([[1e-6, 2e-6], [-3e-6, 4e-6], [0.0, 5e-6]])
     together = fittings.pressure_loss(loss, flow, 1e-5)
     assert together.shape == (3, 2)
-    for row in (0, 1):
-        alone = tube(circle(4e-3), float(worked().area_throat[row]), circle(4e-3), 0.01)
-        expected = fittings.pressure_loss(losses(alone)["Young and Tsai"], flow[:, [row]], 1e-5)[:, 0]
-        assert together[:, row] == pytest.approx(expected, rel=1e-12)
+    for which in (0, 1):
+        alone = tube(circle(4e-3), float(worked().area_throat[which]), circle(4e-3), 0.01)
+        expected = fittings.pressure_loss(losses(alone)["Young and Tsai"], flow[:, [which]], 1e-5)[:, 0]
+        assert together[:, which] == pytest.approx(expected, rel=1e-12)
 
 
 def texts(name: str, narrowing: Narrowing, flow: float, vessel_class: str = "artery") -> tuple[tuple[str, ...], ...]:
@@ -209,11 +214,11 @@ def test_young_tsai_inside_and_outside_its_range() -> None:
     assert texts("Young and Tsai", deep, -8e-6) == (
         (
             "degree by area 0.95 lies above 0.922 (tried in arteries of dogs)",
-            "Reynolds number before 674.8 lies above 500 (such laws held against solved flows)",
+            "Reynolds number before 674.8 lies above 500 (later comparisons of such laws)",
         ),
     )
     assert texts("Young and Tsai", worked(), 0.8e-6)[0] == (
-        "Reynolds number before 67.48 lies below 75 (such laws held against solved flows)",
+        "Reynolds number before 67.48 lies below 75 (later comparisons of such laws)",
     )
 
 
@@ -257,6 +262,27 @@ def test_laws_say_what_they_are() -> None:
             without = {key: value for key, value in LIMITS.items() if key != end}
             with pytest.raises(InputError, match=f"the value of '{end}' is missing"):
                 fittings.range_texts(name, worked(), 1e-6, RHO, MU, "artery", without)
+
+
+def test_literature_rows_of_the_laws() -> None:
+    # every key that a law names has its row; the literals above say what it holds
+    keys = {key for law in LAWS.values() for _, key in law.published}
+    keys |= {end for law in LAWS.values() for limit in law.limits for end in (limit.least, limit.most) if end}
+    assert keys == set(LIMITS)
+    for key in keys:
+        assert row(key).value == pytest.approx(LIMITS[key], rel=1e-14)
+        assert row(key).quantity == "number"
+    for _, key in LAWS["Young and Tsai"].published:
+        assert (row(key).checked, row(key).confidence, row(key).vessel_class) == ("memory", "high", "artery")
+        assert row(key).doi in LAWS["Young and Tsai"].source
+    for key in ("narrowing-least-degree-dogs", "narrowing-most-reynolds", "expansion-laminar-reynolds-hooper-1988"):
+        assert row(key).checked == "seen"
+    assert row("pipe-laminar-reynolds").checked == "common practice"
+    # Hooper's laminar expansion loses more than Borda-Carnot, which is why the limit is there:
+    # at D₁/D₂ = 1/2, 2 (1 − 1/16) = 1.875 against (1 − 1/4)² = 0.5625 of the dynamic pressure
+    ratio = 0.5
+    quadratic = fittings.borda_carnot(tube(1.0, ratio**2, 1.0, 1.0), RHO).quadratic
+    assert quadratic / (RHO / 2 / ratio**4) == pytest.approx([0.5625], rel=1e-12)
 
 
 def test_impossible_numbers_are_refused() -> None:
