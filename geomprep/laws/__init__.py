@@ -4,6 +4,6 @@ No network, no tables, no units but SI. Import the module that holds a formula, 
 ``from geomprep.laws import tube``.
 """
 
-from geomprep.laws import blood, lumped, power_pair, reference_state, shapes, splits, stiffness, tube
+from geomprep.laws import blood, fittings, lumped, power_pair, reference_state, shapes, splits, stiffness, tube
 
-__all__ = ["blood", "lumped", "power_pair", "reference_state", "shapes", "splits", "stiffness", "tube"]
+__all__ = ["blood", "fittings", "lumped", "power_pair", "reference_state", "shapes", "splits", "stiffness", "tube"]

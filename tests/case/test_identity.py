@@ -18,7 +18,7 @@ def hashes(case: Path, folder: Path, **environment: str) -> dict[str, str]:
     return {path.name: hashlib.sha256(path.read_bytes()).hexdigest() for path in sorted(folder.iterdir())}
 
 
-@pytest.mark.parametrize("name", ["neck-veins", "head-arteries"])
+@pytest.mark.parametrize("name", ["neck-veins", "head-arteries", "neck-veins-rough"])
 def test_same_bytes_whatever_the_process(name: str, tmp_path: Path) -> None:
     case = SAMPLES / name / "case.toml"
     one = hashes(case, tmp_path / "a", PYTHONHASHSEED="0", OMP_NUM_THREADS="1", OPENBLAS_NUM_THREADS="1")
