@@ -125,7 +125,8 @@ def tree_errors(case: Case) -> np.ndarray:
     grid, farthest = VoxelGrid(image.origin, image.voxel, np.eye(3)), 3 * stations.radius.max()
     weights = (truth.radius[own].astype(np.float32).astype(float), drawn, None)
     areas = [mask_areas(image.mask, grid, stations.position, stations.offsets, w, farthest).area for w in weights]
-    radii = [*np.sqrt(np.array(areas) / np.pi), drawn]
+    radii = [np.sqrt(np.where(np.isnan(area), np.pi * drawn**2, area) / np.pi) for area in areas]
+    radii.append(drawn)
     errors = []
     for k in range(truth.n_segments):
         here = np.arange(stations.offsets[k], stations.offsets[k + 1])

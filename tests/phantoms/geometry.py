@@ -109,7 +109,7 @@ def tapered(rng: np.random.Generator, deep: bool) -> Vessel:
         place, depth = rng.uniform(0.3, 0.7) * length, rng.uniform(0.3, 0.6)
         radius *= 1 - depth * shape("Gaussian", s - place, rng.uniform(2, 4) * MM)
     radius *= MM / radius.min()
-    bend = rng.uniform(6, 12) * radius.max() if rng.random() < 0.5 else np.inf
+    bend = max(rng.uniform(6, 12) * radius.max(), 0.5 * length) if rng.random() < 0.5 else np.inf
     return Vessel(s, radius, bend, Rotation.random(rng=rng).as_matrix())
 
 
@@ -144,7 +144,10 @@ def in_voxels(vessel: Vessel, voxel: float, step: float, rng: np.random.Generato
     weights = map_radius.astype(np.float32).astype(float)  # squares of single precision are exact
     ways = ((places, None), (places, weights), (beside, None))
     areas = [mask_areas(mask, grid, axis, lines, weight, 3 * wide).area for axis, weight in ways]
-    radii = (*np.sqrt(np.array(areas) / np.pi), map_radius, ridge)
+    radii = [
+        np.sqrt(np.where(np.isnan(area), np.pi * map_radius**2, area) / np.pi) for area in areas
+    ]  # as a build does
+    radii += [map_radius, ridge]
     axes = (places, places, beside, places, places)
     read = [stations_of([(axis, r)]) for axis, r in zip(axes, radii, strict=True)]
     return Voxels(vessel, voxel, dict(zip(READINGS, read, strict=True)))
