@@ -93,6 +93,13 @@ class _Lines:
     line: IntArray
 
 
+def _shrunk(radius: FloatArray) -> FloatArray:
+    """Height at which a station stands so that squared distances are less its squared radius, but for a constant."""
+    # the same radius may square differently alone and in an array, in the last digit
+    height: FloatArray = np.sqrt(np.maximum(np.max(radius) ** 2 - radius**2, 0.0))
+    return height
+
+
 def mask_areas(
     mask: BoolArray,
     grid: VoxelGrid,
@@ -161,7 +168,7 @@ def mask_areas(
     voxels = np.argwhere(mask)
     volume, voxel = np.zeros(len(lines.stations)), float(np.prod(grid.spacing))
     if len(voxels) and len(lines.stations):
-        shrunk = np.zeros(len(lines.stations)) if radius is None else np.sqrt(np.max(radius) ** 2 - radius**2)
+        shrunk = np.zeros(len(lines.stations)) if radius is None else _shrunk(radius)
         tree = cKDTree(np.column_stack((lines.stations, shrunk)))
         for start in range(0, len(voxels), _VOXELS_AT_ONCE):
             place = grid.centres(voxels[start : start + _VOXELS_AT_ONCE])

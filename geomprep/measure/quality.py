@@ -24,7 +24,7 @@ from geomprep.model import (
 
 __all__ = ["describe", "unresolved_finding"]
 
-_LARGEST = 200_000
+_LARGEST = 50_000
 _LISTED = 20
 _ONE_RADIUS = 0.05
 _ARTERY = 1
@@ -43,7 +43,7 @@ def describe(network: Network, voxel: float | None) -> tuple[Network, tuple[Find
     Returns
     -------
     Network
-        With `profiles`, `bending` and `narrowings` filled up to 200,000 stations; above, fitting takes longer than all else.
+        With `profiles`, `bending` and `narrowings` filled up to 50,000 stations; above, fitting takes longer than all else.
         `resolution` and, up to the same size, `intervals` are filled where the voxel is known.
     findings : tuple of Finding
     """

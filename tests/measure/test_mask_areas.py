@@ -200,3 +200,12 @@ def test_every_voxel_goes_to_its_nearest_station() -> None:
     found = mask_areas(mask, MM, stations, one_line(stations))
     nearest = np.bincount(cKDTree(stations).query(np.argwhere(mask))[1], minlength=22)
     np.testing.assert_allclose(found.volume[1:-1], nearest[1:-1], atol=1e-9)  # borders lie between layers
+
+
+def test_equal_radii_whose_squares_round_differently() -> None:
+    """0.00134672841249616 squared alone and in an array differ in the last digit: no root of a negative number."""
+    grid = VoxelGrid(np.zeros(3), np.full(3, 1e-3), np.eye(3))
+    line = np.array([[1.5, 1.5, 2.0], [1.5, 1.5, 4.5], [1.5, 1.5, 7.0]]) * 1e-3
+    mask = np.ones((4, 4, 10), bool)
+    weighted = mask_areas(mask, grid, line, np.array([0, 3]), radius=np.full(3, 0.00134672841249616))
+    assert weighted.area == pytest.approx(mask_areas(mask, grid, line, np.array([0, 3])).area)

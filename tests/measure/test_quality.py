@@ -57,7 +57,7 @@ def test_a_vessel_of_three_voxels_is_not_resolved() -> None:
 
 
 def test_large_networks_are_not_fitted() -> None:
-    network, _ = describe(tube(np.full(200_001, 2e-3)), 0.25e-3)
+    network, _ = describe(tube(np.full(50_001, 2e-3)), 0.25e-3)
     assert network.profiles is None
     assert network.intervals is None
     assert network.resolution is not None
