@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from geomprep.curves import arc_length, interpolate, line_sums, piece_integrals, pieces
-from geomprep.model import Chains, FloatArray, IntArray, PointGraph, chains, degrees
+from geomprep.model import BoolArray, Chains, FloatArray, IntArray, PointGraph, chains, degrees
 
 __all__ = ["Branches", "conductance", "ranges"]
 
@@ -88,6 +88,13 @@ class Branches:
         offsets = self.cut.edge_offsets
         row, owner = ranges(offsets[chain], offsets[chain + 1])
         return self.cut.edge[row], owner
+
+    def protected(self, chain: IntArray) -> BoolArray:
+        """Whether a point of each chain is protected, junctions left out: they belong to others, too."""
+        row, owner = self.rows(chain)
+        point = self.cut.point[row]
+        held = self.graph.protected[point] & (self.degree[point] < 3)
+        return np.bincount(owner[held], minlength=len(chain)) > 0
 
     def chain_conductance(self, chain: IntArray) -> FloatArray:
         """Conductance of chains from end to end at a viscosity of 1 Pa·s, m³/(Pa·s)."""

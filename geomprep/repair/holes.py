@@ -7,7 +7,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from geomprep.errors import InputError
-from geomprep.model import Basis, BoolArray, FloatArray, IntArray, PointGraph, Repair, anchor_ids
+from geomprep.model import Basis, FloatArray, IntArray, PointGraph, Repair, anchor_ids
 from geomprep.repair.branches import Branches, conductance
 from geomprep.repair.edits import without_edges
 from geomprep.repair.records import Change, recorded
@@ -116,7 +116,7 @@ def _round(
         return graph, []
     ids = anchor_ids("hole", graph.raw_points, graph.source_point[_anchors(branches, pairs)])
     proposed = (pairs.apart <= settings.apart_below) & (pairs.length <= settings.longest)
-    proposed &= ~_protected(branches, pairs.chain[:, 1])
+    proposed &= ~branches.protected(pairs.chain[:, 1])
     dropped_by = np.full(graph.n_edges, -1, np.int64)
     points, radius, basis = graph.points.copy(), graph.radius.copy(), graph.radius_basis.copy()
     repairs: list[Repair] = []
@@ -154,14 +154,6 @@ def _pairs(branches: Branches, settings: HoleSettings) -> _Pairs:
     turned = (ends[chain[:, 0], 0] != ends[chain[:, 1], 0]).astype(np.int64)
     apart, nearness, total = _apart(branches, chain, turned)
     return _Pairs(chain, turned, apart, nearness, branches.length[chain].max(axis=1) / total, flow)
-
-
-def _protected(branches: Branches, chain: IntArray) -> BoolArray:
-    """Whether a point inside each chain is protected."""
-    row, owner = branches.rows(chain)
-    point = branches.cut.point[row]
-    held = branches.graph.protected[point] & (branches.degree[point] == 2)
-    return np.bincount(owner[held], minlength=len(chain)) > 0
 
 
 def _worse_first(branches: Branches, chain: IntArray, flow: FloatArray) -> np.ndarray:

@@ -111,9 +111,8 @@ def drop_copies(graph: PointGraph, settings: CopySettings, given: Given) -> Step
 
 def _alone(branches: Branches) -> IntArray:
     """Chains with two open ends, and so a part of their own, without protected points."""
-    row, owner = branches.rows(np.arange(branches.cut.n_chains))
-    held = np.bincount(owner[branches.graph.protected[branches.cut.point[row]]], minlength=branches.cut.n_chains) > 0
-    return np.flatnonzero((branches.degree[branches.ends] == 1).all(axis=1) & ~held)
+    alone = np.flatnonzero((branches.degree[branches.ends] == 1).all(axis=1))
+    return alone[~branches.protected(alone)]
 
 
 def _cover(branches: Branches, chosen: IntArray) -> tuple[FloatArray, FloatArray]:

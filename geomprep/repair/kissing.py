@@ -97,7 +97,7 @@ def part_kissing(graph: PointGraph, settings: KissingSettings, given: Given) -> 
     doubled: list[tuple[int, IntArray, FloatArray]] = []
     for found in (link_contacts(branches, _BEYOND * settings.link_outside), shared_contacts(branches)):
         ids = anchor_ids("kissing", graph.raw_points, graph.source_point[_anchors(branches, found)])
-        proposed = _is_touch(found, settings)
+        proposed = _is_touch(found, settings) & ~_named_link(branches, found)
         for row, key in enumerate(ids.tolist()):
             if not given.verdicts.wanted(key, bool(proposed[row])):
                 continue
@@ -125,6 +125,15 @@ def _is_touch(found: Contacts, settings: KissingSettings) -> BoolArray:
     )
     touch: BoolArray = straight & alike & clear & (found.outside <= settings.link_outside)
     return touch
+
+
+def _named_link(branches: Branches, found: Contacts) -> BoolArray:
+    """Whether a link, its ends included, is protected: a vessel that has a name is there."""
+    named = np.zeros(len(found.link), np.bool_)
+    link = found.link >= 0
+    chain = found.link[link]
+    named[link] = branches.protected(chain) | branches.graph.protected[branches.ends[chain]].any(axis=1)
+    return named
 
 
 def _options(found: Contacts, row: int) -> tuple[str, ...]:

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from geomprep.errors import InputError
-from geomprep.model import BoolArray, FloatArray, IntArray, PointGraph, Repair, anchor_ids
+from geomprep.model import FloatArray, IntArray, PointGraph, Repair, anchor_ids
 from geomprep.repair.branches import Branches
 from geomprep.repair.edits import without_edges
 from geomprep.repair.records import Change, recorded
@@ -148,20 +148,12 @@ def _candidates(branches: Branches, settings: SpurSettings, given: Given) -> _Ca
     limit = np.maximum(settings.outside_below * graph.radius[tip], 2.0 * (given.voxel or 0.0))
     reach = 2.0 * graph.radius[base] + _LOOKED_AT * limit
     chosen = np.flatnonzero((is_open.sum(axis=1) == 1) & (degree[base] >= 3) & (branches.length < reach))
-    chosen = chosen[~_protected(branches, chosen)]
+    chosen = chosen[~branches.protected(chosen)]
     side, base = side[chosen], base[chosen]
     if len(chosen) == 0:
         return _Candidates(chosen, side, np.zeros(0), np.zeros(0), np.zeros(0))
     outside, own, parent = _beyond_parent(branches, chosen, side, base)
     return _Candidates(chosen, side, outside, own, parent)
-
-
-def _protected(branches: Branches, chosen: IntArray) -> BoolArray:
-    """Whether any point of each chain but its base is protected."""
-    row, owner = branches.rows(chosen)
-    point = branches.cut.point[row]
-    held = branches.graph.protected[point] & (branches.degree[point] < 3)
-    return np.bincount(owner[held], minlength=len(chosen)) > 0
 
 
 def _beyond_parent(

@@ -94,3 +94,14 @@ def test_veins_are_asked(lines) -> None:
 def test_limits_out_of_range(settings: dict) -> None:
     with pytest.raises(InputError, match=r"repair\.kissing\."):
         KissingSettings(**settings)
+
+
+@pytest.mark.parametrize("where", [0.0, 0.5, 1.0])
+def test_a_link_with_a_name_is_a_vessel(lines, where: float) -> None:
+    """A short communicating vessel looks like a false link; a name on it, or where it begins, says what it is."""
+    from dataclasses import replace
+
+    graph = linked(lines, 2.4)
+    protected = np.zeros(graph.n_points, np.bool_)
+    protected[np.argmin(np.linalg.norm(graph.points - [2.4 * where, 0, 0], axis=1))] = True
+    assert parted(replace(graph, protected=protected)).repairs == ()
